@@ -1,0 +1,124 @@
+"""Free unknowns: which directions of which joints move, and what holds the others.
+
+A displacement of all joints is U = T q + held, q (n,) the free unknowns, T (3J, n) with orthonormal
+columns: unit axes, or rotated ones at joints held along an inclined direction.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.sparse import coo_array, csr_array, identity, kron
+
+from tautbar.mechanics.structure import Structure
+from tautbar.model.parts import Parts, Support
+
+Array = NDArray[np.float64]
+Index = NDArray[np.intp]
+
+
+@dataclass(frozen=True)
+class Freedom:
+    """Free directions, member incidence and springs to ground.
+
+    ``G`` (n, 3N) adds member end forces (3, N) to the free unknowns, and its transpose gives the
+    relative displacement of the member ends; ``incidence`` (J, N) is -1 at the start, +1 at the end.
+    """
+
+    T: csr_array  # (3J, n)
+    G: csr_array  # (n, 3N)
+    GT: csr_array  # (3N, n)
+    incidence: csr_array  # (J, N)
+    spring: csr_array  # (3J, 3J) N/m, supports on springs
+
+    @property
+    def n(self) -> int:
+        return int(self.T.shape[1])
+
+    def joint_of(self) -> NDArray[np.intp]:
+        """The joint of each free unknown, (n,)."""
+        T = self.T.tocoo()
+        out = np.zeros(self.n, dtype=np.intp)
+        out[T.col] = T.row % (self.T.shape[0] // 3)
+        return out
+
+    def spread(self, q: Array) -> Array:
+        """Displacement of all joints (3, J) from the free unknowns, without what is held."""
+        return np.asarray(self.T @ q).reshape(3, -1)
+
+    def gather(self, force: Array) -> Array:
+        """Free components (n,) of joint forces (3, J)."""
+        return np.asarray(self.T.T @ force.ravel())
+
+    def held_part(self, vector: Array) -> Array:
+        """The part of a joint vector (3, J) in held directions."""
+        return vector - self.spread(self.gather(vector))
+
+
+def free_directions(parts: Parts, structure: Structure) -> Freedom:
+    """Directions that supports leave free, numbered joint by joint."""
+    T = _basis(parts, structure.joints)
+    N = structure.members
+    one = np.ones(N)
+    rows = np.concatenate([structure.start, structure.end])
+    cols = np.tile(np.arange(N), 2)
+    incidence = coo_array((np.concatenate([-one, one]), (rows, cols)), shape=(structure.joints, N)).tocsr()
+    G = csr_array(T.T @ kron(identity(3), incidence, format="csr"))
+    return Freedom(T, G, csr_array(G.T), incidence, _springs(parts, structure.joints))
+
+
+def _basis(parts: Parts, J: int) -> csr_array:
+    held = np.zeros((J, 3), dtype=bool)
+    if parts.held_axis is not None:
+        held[:, parts.held_axis] = True
+    for support in parts.supports:
+        held[np.ix_(np.array(support.joints, dtype=np.intp), np.array(support.fixed, dtype=np.intp))] = True
+    inclined = _inclined(parts.supports)
+    free = ~held
+    free[list(inclined)] = False
+    joint, axis = np.nonzero(free)
+    value = np.ones(joint.size)
+    for j, normals in inclined.items():
+        basis = _complement(np.vstack([np.eye(3)[held[j]], *normals]))
+        joint = np.append(joint, np.full(basis.size, j))
+        axis = np.append(axis, np.tile(np.arange(3), len(basis)))
+        value = np.append(value, basis.ravel())
+    return _numbered(joint, axis, value, int(free.sum()), J)
+
+
+def _numbered(joint: Index, axis: Index, value: Array, plain: int, J: int) -> csr_array:
+    """T with its unknowns in the order of the joints; inclined ones come in threes of entries."""
+    own = np.concatenate([np.arange(plain), plain + (np.arange(value.size - plain)) // 3])
+    first = np.concatenate([joint[:plain], joint[plain::3]])
+    number = np.empty(first.size, dtype=np.intp)
+    number[np.argsort(first, kind="stable")] = np.arange(first.size)
+    T = csr_array((value, (axis * J + joint, number[own])), shape=(3 * J, first.size))
+    T.eliminate_zeros()
+    return T
+
+
+def _inclined(supports: tuple[Support, ...]) -> dict[int, list[Array]]:
+    found: dict[int, list[Array]] = {}
+    for support in supports:
+        if support.along is not None:
+            for joint in support.joints:
+                found.setdefault(joint, []).append(np.array([support.along]))
+    return found
+
+
+def _complement(held: Array) -> Array:
+    """Orthonormal directions (k, 3) at right angles to all held ones (m, 3)."""
+    _, s, Vt = np.linalg.svd(held)
+    return np.asarray(Vt[int((s > 1e-12).sum()) :])
+
+
+def _springs(parts: Parts, J: int) -> csr_array:
+    rows, values = [], []
+    for support in parts.supports:
+        for axis, k in support.springs:
+            rows += [axis * J + j for j in support.joints]
+            values += [k] * len(support.joints)
+    at = np.array(rows, dtype=np.intp)
+    return coo_array((np.array(values, dtype=float), (at, at)), shape=(3 * J, 3 * J)).tocsr()
