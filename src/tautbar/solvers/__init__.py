@@ -1,0 +1,1 @@
+"""Equilibrium, stability and steps over time. Knows no file and no progress."""

@@ -1,0 +1,122 @@
+"""A structure with its free unknowns, its one fixed matrix pattern and the solver chosen for it."""
+
+from __future__ import annotations
+
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.sparse import coo_array, csr_array, identity, kron
+
+from tautbar.algebra.pattern import SymmetricPattern
+from tautbar.algebra.scatter import ScatterPlan
+from tautbar.algebra.solver import Solver, choose_solver
+from tautbar.mechanics import members
+from tautbar.mechanics.entries import GENERAL, SYMMETRIC, member_entries
+from tautbar.mechanics.freedom import Freedom, free_directions
+from tautbar.mechanics.mass import joint_mass_matrix
+from tautbar.mechanics.structure import Structure, build
+from tautbar.model.parts import Parts
+
+Array = NDArray[np.float64]
+
+
+class System:
+    """All that solvers ask of a structure: positions, forces, and matrices on one pattern.
+
+    ``n`` free unknowns q [m]; "lower" arrays are matrix data on the lower triangle of ``pattern``.
+    """
+
+    def __init__(self, structure: Structure, freedom: Freedom) -> None:
+        self.structure = structure
+        self.freedom = freedom
+        entries = member_entries(freedom.GT, SYMMETRIC)
+        spring = coo_array(freedom.T.T @ freedom.spring @ freedom.T)
+        mass = coo_array(self._free(identity(structure.joints, format="csr")))
+        self.pattern = SymmetricPattern.from_entries(
+            freedom.n,
+            np.concatenate([entries.row, spring.row, mass.row]),
+            np.concatenate([entries.col, spring.col, mass.col]),
+        )
+        low = entries.row >= entries.col
+        self._scatter = ScatterPlan(
+            self.pattern.position(entries.row[low], entries.col[low]),
+            entries.source[low],
+            entries.coefficient[low],
+            self.pattern.nnz,
+            6 * structure.members,
+        )
+        self.spring = csr_array(spring)
+        self.spring_lower = self.lower_of(self.spring)
+        self.solver: Solver = choose_solver(self.pattern)
+
+    @classmethod
+    def of(cls, parts: Parts) -> System:
+        """The system of a checked model."""
+        structure = build(parts)
+        return cls(structure, free_directions(parts, structure))
+
+    @property
+    def n(self) -> int:
+        return self.freedom.n
+
+    def _free(self, between_joints: csr_array) -> csr_array:
+        T = self.freedom.T
+        return csr_array(T.T @ kron(identity(3), between_joints, format="csr") @ T)
+
+    def lower_of(self, matrix: csr_array) -> Array:
+        """Data on the lower triangle of the pattern of a symmetric (n, n) matrix within it."""
+        coo = matrix.tocoo()
+        low = coo.row >= coo.col
+        out = np.zeros(self.pattern.nnz)
+        np.add.at(out, self.pattern.position(coo.row[low], coo.col[low]), coo.data[low])
+        return out
+
+    def member_lower(self, blocks: Array) -> Array:
+        """Matrix of member blocks (6, N), springs left out."""
+        return self._scatter(blocks)
+
+    def member_full(self, blocks: Array) -> Array:
+        """Unsymmetric matrix data on the full pattern, of member blocks (9, N)."""
+        return self._full_scatter(blocks)
+
+    @cached_property
+    def _full_scatter(self) -> ScatterPlan:
+        # Only the exact Newton of a hard time step asks for this one.
+        entries = member_entries(self.freedom.GT, GENERAL)
+        position = self.pattern.full.position(entries.row, entries.col)
+        size = self.pattern.full.indices.size
+        return ScatterPlan(position, entries.source, entries.coefficient, size, 9 * self.structure.members)
+
+    def apart(self, q: Array, held: Array | None = None) -> Array:
+        """How far member ends moved apart (3, N) [m]; ``held`` (3, N) is the share of held joints."""
+        du = (self.freedom.GT @ q).reshape(3, -1)
+        return np.asarray(du if held is None else du + held)
+
+    def apart_held(self, move: Array) -> Array:
+        """Share of held displacements (3, J) in `apart`."""
+        return np.asarray(move @ self.freedom.incidence)
+
+    def pull(self, axial: Array, n: Array) -> Array:
+        """Internal force (n,) [N] of member forces along unit vectors (3, N)."""
+        return np.asarray(self.freedom.G @ (axial * n).ravel())
+
+    def joint_pull(self, axial: Array, n: Array) -> Array:
+        """The same at all joints, (3, J) [N]."""
+        return np.asarray((self.freedom.incidence @ (axial * n).T).T)
+
+    def joint_mass(self, added: Array, lumped: bool) -> csr_array:
+        """Mass between joints (J, J) [kg]; ``added`` (J,) are masses of load cases."""
+        return joint_mass_matrix(self.structure, added, lumped)
+
+    def free_mass(self, joint_mass: csr_array) -> csr_array:
+        """Mass matrix over the free unknowns (n, n) [kg]."""
+        return self._free(joint_mass)
+
+    def springs(self, take_up: Array | None = None, heating: Array | None = None) -> members.Springs:
+        return members.springs(self.structure, take_up, heating)
+
+    def greatest_joint_move(self, q: Array) -> float:
+        """Largest displacement of any joint [m] in the free part ``q``."""
+        U = self.freedom.spread(q)
+        return float(np.sqrt((U * U).sum(axis=0).max(initial=0.0)))
