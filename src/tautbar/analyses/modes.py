@@ -1,0 +1,129 @@
+"""Natural frequencies and mode shapes about a state, proven complete by the inertia count."""
+
+from __future__ import annotations
+
+import time
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.sparse import csr_array
+
+from tautbar.algebra import eigen
+from tautbar.analyses.context import Context, Rest
+from tautbar.analyses.modes_words import audit_lines, outcome, warnings
+from tautbar.mechanics import members
+from tautbar.mechanics.mass import kinetic_energy_by_member
+from tautbar.model.parts import Modes
+from tautbar.records.fields import Field, Record
+
+Array = NDArray[np.float64]
+SOURCES = (
+    "consistent mass (m L0/6)[[2, 1], [1, 2]] in all directions, or half the mass at each end",
+    "shift-and-invert Lanczos; completeness by Sylvester's law of inertia (Sturm count)",
+)
+
+
+def run_modes(context: Context, analysis: Modes) -> Record:
+    """Modes of the tangent at the state the analysis starts from."""
+    began = time.perf_counter()
+    rest, system = context.start(analysis.start), context.system
+    lumped = analysis.mass == "lumped"
+    joint_mass = system.joint_mass(rest.acting.mass, lumped)
+    M = system.free_mass(joint_mass)
+    K, one_sided = _tangent(context, rest)
+    up_to = None if analysis.up_to is None else (2 * np.pi * analysis.up_to) ** 2
+    found = eigen.lowest_modes(
+        K,
+        system.lower_of(M),
+        system.pattern,
+        count=analysis.count if up_to is None else None,
+        up_to=up_to,
+        solver=system.solver,
+    )
+    holds = found.complete and found.negative == 0
+    fields = _fields(context, found, M, lumped)
+    return Record(
+        name=analysis.name,
+        kind="modes",
+        status="complete" if holds else "failed",
+        outcome=outcome(context, found, fields),
+        acting=(f"{rest.loading.name}: {rest.loading.acting}",),
+        settings={
+            "from": analysis.start.analysis if analysis.start else "the drawing",
+            "count": "all up to the limit" if up_to is not None else analysis.count,
+            "up_to": "none" if analysis.up_to is None else analysis.up_to,
+            "mass": analysis.mass,
+        },
+        fields=fields,
+        audit_lines=audit_lines(found),
+        warnings=warnings(context, rest, found, one_sided),
+        sources=SOURCES,
+        wall_time=time.perf_counter() - began,
+    )
+
+
+def _tangent(context: Context, rest: Rest) -> tuple[Array, NDArray[np.bool_]]:
+    """Tangent stiffness at the state, and which ties are just at their length there."""
+    potential = context.potential(rest.acting)
+    look = potential.look(rest.q)
+    sp, e = potential.springs, look.stretch.e
+    return potential.curvature(look), members.taut(sp, e) & ~members.firmly_taut(sp, e)
+
+
+def _fields(context: Context, found: eigen.Modes, M: csr_array, lumped: bool) -> dict[str, Field]:
+    system = context.system
+    value = found.eigenvalue
+    zero = np.arange(value.size) < found.negative + found.zero
+    frequency = np.sqrt(np.where(zero, 0.0, np.maximum(value, 0.0))) / (2 * np.pi)
+    frequency[: found.negative] = np.nan
+    shape = np.stack([system.freedom.spread(x) for x in found.shape.T]) if value.size else np.zeros((0, 3, 1))
+    factor = _participation(context, found, M)
+    names, share = _energy_shares(context, shape, found, M, lumped)
+    mode, joint = ("mode",), ("mode", "joint", "direction")
+    return {
+        "frequency": Field(frequency, "Hz", "natural frequency", mode),
+        "eigenvalue": Field(value, "rad2/s2", "square of the circular frequency", mode),
+        "shape": Field(shape.transpose(0, 2, 1), "1", "shape, generalised mass 1 kg", joint),
+        "participation_factor": Field(factor, "kg^0.5", "participation factor", ("mode", "direction")),
+        "effective_mass": Field(factor**2, "kg", "effective mass", ("mode", "direction")),
+        "free_mass": Field(_free_mass(context, M), "kg", "mass free to move", ("direction",)),
+        "kinetic_energy_share": Field(
+            share, "1", "share of kinetic energy by member group", ("mode", "group")
+        ),
+        "group": Field(np.array(names, dtype=object), "1", "member group, joint masses last", ("group",)),
+        "audit/residual": Field(found.residual, "1", "|K x - w2 M x| / |K x|", mode),
+        "audit/orthogonality": Field(np.array(found.orthogonality), "1", "largest of |x.M x - 1|"),
+        "audit/sturm_count": Field(np.array(found.count_below), "1", "eigenvalues counted below the last"),
+        "audit/zero_modes": Field(np.array(found.zero), "1", "modes without stiffness"),
+        "audit/negative": Field(np.array(found.negative), "1", "unstable modes"),
+    }
+
+
+def _rigid(context: Context) -> Array:
+    """Free part of a unit translation in each direction (n, 3)."""
+    J = context.system.structure.joints
+    return np.stack([context.system.freedom.gather(np.outer(d, np.ones(J))) for d in np.eye(3)], axis=1)
+
+
+def _participation(context: Context, found: eigen.Modes, M: csr_array) -> Array:
+    return np.asarray(found.shape.T @ (M @ _rigid(context)))
+
+
+def _free_mass(context: Context, M: csr_array) -> Array:
+    one = _rigid(context)
+    return np.asarray((one * (M @ one)).sum(axis=0))
+
+
+def _energy_shares(
+    context: Context, shape: Array, found: eigen.Modes, M: csr_array, lumped: bool
+) -> tuple[list[str], Array]:
+    """Share of each mode's kinetic energy in each group of members (mass at joints: the last column)."""
+    system, groups = context.system, context.parts.members.groups
+    names = [*groups, "masses"]
+    share = np.zeros((len(shape), len(names)))
+    for k, U in enumerate(shape):
+        by_member = kinetic_energy_by_member(system.structure, U, lumped)
+        total = float(found.shape[:, k] @ (M @ found.shape[:, k])) or 1.0
+        share[k, :-1] = [by_member[list(which)].sum() / total for which in groups.values()]
+        share[k, -1] = 1.0 - by_member.sum() / total
+    return names, share

@@ -1,0 +1,164 @@
+"""A static analysis in sentences: its answer, its audit and its warnings."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from tautbar.analyses.context import Context
+from tautbar.analyses.words import chosen, direction, listed, quantity
+from tautbar.model.parts import Static
+
+if TYPE_CHECKING:
+    from tautbar.analyses.static import Solved
+
+MOST_LOADINGS = 12
+
+
+def outcome(context: Context, analysis: Static, solved: list[Solved]) -> str:
+    """The answer, failures first."""
+    failed = [s for s in solved if not s.verdict.holds]
+    lines = [f"NOT A RESULT, {s.loading.name}: {_fault(context, s)}" for s in failed]
+    good = [s for s in solved if s.verdict.holds]
+    shown = good[:MOST_LOADINGS]
+    lines += [f"{s.loading.name}: {_answer(context, s)}" for s in shown]
+    if len(good) > len(shown):
+        lines.append(f"... and {len(good) - len(shown)} more loadings, in the results file")
+    if len(good) > 1:
+        lines.append(_governing(context, good))
+    return "\n".join(lines)
+
+
+def _answer(context: Context, s: Solved) -> str:
+    U, N = s.displacement, s.verdict.look.axial
+    size = np.sqrt((U * U).sum(axis=0))
+    parts = []
+    if size.size and size.max() > 0:
+        j = int(size.argmax())
+        parts.append(f"largest displacement {quantity(size[j], 'm')} at {context.joint_names[j]}")
+    for sign, word in ((1, "tension"), (-1, "compression")):
+        if N.size and (sign * N).max() > 0:
+            m = int((sign * N).argmax())
+            parts.append(f"greatest {word} {quantity(abs(N[m]), 'N')} in {context.member_names[m]}")
+    if s.slack.any():
+        parts.append(f"slack: {chosen(context.member_names, s.slack)}")
+    elif context.system.structure.can_slack.any():
+        parts.append("no member is slack")
+    return "; ".join(parts) or "nothing moves and nothing is loaded"
+
+
+def _governing(context: Context, good: list[Solved]) -> str:
+    N = np.stack([s.verdict.look.axial for s in good])
+    k, m = np.unravel_index(int(N.argmax()), N.shape)
+    name = context.member_names[m]
+    text = f"governing: tension {quantity(N[k, m], 'N')} in {name} under {good[k].loading.name}"
+    if N.min() < 0:
+        k, m = np.unravel_index(int(N.argmin()), N.shape)
+        text += f"; compression {quantity(-N[k, m], 'N')} in {context.member_names[m]}"
+        text += f" under {good[k].loading.name}"
+    return text
+
+
+def _fault(context: Context, s: Solved) -> str:
+    return {"not converged": _unconverged, "unstable": _unstable, "folded": _folded}[s.verdict.fault](
+        context, s
+    )
+
+
+def _unconverged(context: Context, s: Solved) -> str:
+    force = context.system.freedom.spread(s.verdict.look.residual)
+    size = np.sqrt((force * force).sum(axis=0))
+    joint = int(size.argmax())
+    return (
+        f"no equilibrium found; still out of balance by {quantity(size[joint], 'N')} at joint "
+        f"{context.joint_names[joint]} in {direction(force[:, joint])}. Look for a part that nothing holds "
+        "there, a load that no member can carry, or give the analysis more steps"
+    )
+
+
+def _unstable(context: Context, s: Solved) -> str:
+    v = s.verdict
+    if v.pivots.negative == 0:
+        joint, way = context.name_direction(next(f.vector for f in v.free if f.nature == "unstable"))
+        return f"the equilibrium is unstable: joint {joint} gives way in {direction(way)}"
+    text = f"the equilibrium is unstable ({v.pivots.negative} negative pivots)"
+    for n in v.neighbours:
+        joint, way = context.name_direction(n.descent.q - v.look.q)
+        text += (
+            f"; a stable one lies {quantity(n.move, 'm')} away (joint {joint} moves in {direction(way)}), "
+            f"{quantity(n.energy_below, 'J')} lower"
+        )
+    return text
+
+
+def _folded(context: Context, s: Solved) -> str:
+    v = s.verdict
+    return (
+        f"the structure folded: {context.member_names[v.turned_member]} turned {np.rad2deg(v.turn):.0f} "
+        f"degrees from where it is drawn (farthest joint {100 * v.move:.0f} % of the model's size). If it is "
+        'meant to, set folding = "allowed"'
+    )
+
+
+def audit_lines(context: Context, analysis: Static, solved: list[Solved]) -> tuple[str, ...]:
+    """Evidence over all loadings, the worst of each kind."""
+    worst = max(solved, key=lambda s: s.verdict.residual)
+    lines = [
+        f"force residual {worst.verdict.residual:.1e} of the largest force (asked: {analysis.tolerance:g})",
+        f"sum of reactions against sum of loads: {max(s.reaction_sum_error for s in solved):.1e}",
+        _stability_line(context, solved),
+        _shape_line(context, solved),
+    ]
+    work = sum(s.verdict.factorisations for s in solved)
+    roads = listed(sorted({s.verdict.road for s in solved}))
+    return (*lines, f"{work} factorisations ({roads}, {context.system.solver.name})")
+
+
+def _stability_line(context: Context, solved: list[Solved]) -> str:
+    unstable = [s.loading.name for s in solved if s.verdict.fault == "unstable"]
+    if unstable:
+        return f"stability: FAILED for {listed(unstable)}"
+    if any(s.verdict.fault == "not converged" for s in solved):
+        return "stability: not judged where no equilibrium was found"
+    zero = max(s.verdict.pivots.zero for s in solved)
+    return "stable: no negative pivots" + (f", {zero} zero" if zero else "")
+
+
+def _shape_line(context: Context, solved: list[Solved]) -> str:
+    turned = max(solved, key=lambda s: s.verdict.turn)
+    move = max(s.verdict.move for s in solved)
+    text = f"greatest move {100 * move:.2g} % of the model's size"
+    if turned.verdict.turned_member >= 0:
+        name = context.member_names[turned.verdict.turned_member]
+        text = (
+            f"greatest turn of a bar or strut {np.rad2deg(turned.verdict.turn):.2g} degrees ({name}); {text}"
+        )
+    return text
+
+
+def warnings(context: Context, solved: list[Solved]) -> tuple[str, ...]:
+    """What holds, but should be known."""
+    found: list[str] = []
+    for s in (s for s in solved if s.verdict.holds):
+        v, name = s.verdict, s.loading.name
+        if v.left_saddle is not None:
+            found.append(
+                f"{name}: the balance reached first was unstable; the structure gives way by "
+                f"{quantity(v.left_saddle, 'm')} to the stable one reported"
+            )
+        found += [_free_words(context, name, f.vector, f.nature) for f in v.free]
+        if v.move > 0.1:
+            found.append(f"{name}: joints move by {100 * v.move:.0f} % of the model's size")
+    return tuple(dict.fromkeys(found))
+
+
+def _free_words(context: Context, loading: str, vector: np.ndarray, nature: str) -> str:
+    joint, way = context.name_direction(vector)
+    if nature == "loose":
+        return (
+            f"{loading}: joint {joint} is loose in {direction(way)}: nothing holds it, and nothing pulls it"
+        )
+    return (
+        f"{loading}: joint {joint} is held in {direction(way)} only once it has moved (no stiffness at rest)"
+    )
