@@ -14,6 +14,7 @@ from tautbar.analyses.history_audit import Tally
 from tautbar.analyses.history_words import audit_lines, outcome, warnings
 from tautbar.errors import NotConverged
 from tautbar.mechanics.damping import Rayleigh, rayleigh
+from tautbar.mechanics.product import Product
 from tautbar.mechanics.pulses import event_forces
 from tautbar.model.parts import History, Loading
 from tautbar.records.fields import Record
@@ -164,8 +165,7 @@ class HistoryRun:
         motion, freedom = self.motion, self.context.system.freedom
         needed = motion.joint_forces(step, V, A)
         acting = self.rest.acting.force + motion.events.at(step.state.t, step.inside)
-        grounded = (freedom.spring @ U.ravel()).reshape(3, -1)
-        return np.asarray(freedom.held_part(needed - acting) - grounded)
+        return freedom.held_part(needed - acting) - freedom.grounded(U)
 
     def _kept(self, values: dict[str, Array]) -> dict[str, Array]:
         store = self.analysis.store
@@ -212,7 +212,7 @@ def start_history(context: Context, analysis: History) -> HistoryRun:
         held=context.held(rest.acting),
         dead=potential.force,
         events=event_forces(pulses, system.structure.joints),
-        joint_mass=system.joint_mass(rest.acting.mass, choices.lumped),
+        joint_mass=Product(system.joint_mass(rest.acting.mass, choices.lumped)),
         rayleigh=choices.rayleigh,
         damper_blocks=damper_blocks(
             springs, look.stretch, look.axial, choices.rayleigh.stiffness_part, small

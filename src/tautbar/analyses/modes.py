@@ -73,9 +73,10 @@ def _tangent(context: Context, rest: Rest) -> tuple[Array, NDArray[np.bool_]]:
 def _fields(context: Context, found: eigen.Modes, M: csr_array, lumped: bool) -> dict[str, Field]:
     system = context.system
     value = found.eigenvalue
-    zero = np.arange(value.size) < found.negative + found.zero
+    unstable = max(found.negative, 0)  # -1 where it could not be counted
+    zero = np.arange(value.size) < unstable + found.zero
     frequency = np.sqrt(np.where(zero, 0.0, np.maximum(value, 0.0))) / (2 * np.pi)
-    frequency[: found.negative] = np.nan
+    frequency[:unstable] = np.nan
     shape = np.stack([system.freedom.spread(x) for x in found.shape.T]) if value.size else np.zeros((0, 3, 1))
     factor = _participation(context, found, M)
     names, share = _energy_shares(context, shape, found, M, lumped)

@@ -88,8 +88,8 @@ def _solve(context: Context, analysis: Static, start: Rest, loading: Loading) ->
     look = verdict.look
     pull = context.system.joint_pull(look.axial, look.stretch.n)
     displacement = context.displacement(look.q, acting)
-    grounded = -(context.system.freedom.spring @ displacement.ravel()).reshape(3, -1)
-    reaction = context.system.freedom.held_part(pull - acting.force) + grounded
+    grounded = context.system.freedom.grounded(displacement)
+    reaction = context.system.freedom.held_part(pull - acting.force) - grounded
     total = (reaction + acting.force).sum(axis=1)
     largest = max(np.abs(reaction).max(initial=0.0), np.abs(acting.force).max(initial=0.0))
     slack = ~members.taut(potential.springs, look.stretch.e)

@@ -6,12 +6,11 @@ columns: unit axes, or rotated ones at joints held along an inclined direction.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 from numpy.typing import NDArray
 from scipy.sparse import coo_array, csr_array, identity, kron
 
+from tautbar.mechanics.product import Product
 from tautbar.mechanics.structure import Structure
 from tautbar.model.parts import Parts, Support
 
@@ -19,54 +18,74 @@ Array = NDArray[np.float64]
 Index = NDArray[np.intp]
 
 
-@dataclass(frozen=True)
 class Freedom:
     """Free directions, member incidence and springs to ground.
 
-    ``G`` (n, 3N) adds member end forces (3, N) to the free unknowns, and its transpose gives the
-    relative displacement of the member ends; ``incidence`` (J, N) is -1 at the start, +1 at the end.
+    Attributes
+    ----------
+    T : (3J, n) sparse
+        Displacement of all joints from the free unknowns.
+    GT : (3N, n) sparse
+        Relative displacement of member ends from the free unknowns.
+    spring : (3J, 3J) sparse
+        Supports on springs [N/m].
     """
 
-    T: csr_array  # (3J, n)
-    G: csr_array  # (n, 3N)
-    GT: csr_array  # (3N, n)
-    incidence: csr_array  # (J, N)
-    spring: csr_array  # (3J, 3J) N/m, supports on springs
+    def __init__(self, T: csr_array, incidence: csr_array, spring: csr_array) -> None:
+        self.T, self.spring = T, spring
+        G = csr_array(T.T @ kron(identity(3), incidence, format="csr"))
+        self.GT = csr_array(G.T)
+        self._T, self._T_back = Product(T), Product(csr_array(T.T))
+        self._G, self._GT = Product(G), Product(self.GT)
+        self._incidence, self._incidence_back = Product(incidence), Product(csr_array(incidence.T))
+        self._spring = Product(spring)
 
     @property
     def n(self) -> int:
         return int(self.T.shape[1])
 
-    def joint_of(self) -> NDArray[np.intp]:
-        """The joint of each free unknown, (n,)."""
-        T = self.T.tocoo()
-        out = np.zeros(self.n, dtype=np.intp)
-        out[T.col] = T.row % (self.T.shape[0] // 3)
-        return out
-
     def spread(self, q: Array) -> Array:
         """Displacement of all joints (3, J) from the free unknowns, without what is held."""
-        return np.asarray(self.T @ q).reshape(3, -1)
+        return (self._T @ q).reshape(3, -1)
 
     def gather(self, force: Array) -> Array:
         """Free components (n,) of joint forces (3, J)."""
-        return np.asarray(self.T.T @ force.ravel())
+        return self._T_back @ force.ravel()
 
     def held_part(self, vector: Array) -> Array:
         """The part of a joint vector (3, J) in held directions."""
         return vector - self.spread(self.gather(vector))
 
+    def apart(self, q: Array) -> Array:
+        """How far the ends of each member move apart (3, N) for free unknowns (n,)."""
+        return (self._GT @ q).reshape(3, -1)
+
+    def apart_of_joints(self, displacement: Array) -> Array:
+        """The same for displacements of all joints (3, J)."""
+        return (self._incidence_back @ displacement.T).T
+
+    def pull(self, ends: Array) -> Array:
+        """Force on the free unknowns (n,) of end forces (3, N): plus at the end, minus at the start."""
+        return self._G @ ends.ravel()
+
+    def joint_pull(self, ends: Array) -> Array:
+        """The same at all joints (3, J)."""
+        return (self._incidence @ ends.T).T
+
+    def grounded(self, displacement: Array) -> Array:
+        """Force that displaced joints (3, J) [m] put into the springs to ground (3, J) [N]."""
+        return (self._spring @ displacement.ravel()).reshape(3, -1)
+
 
 def free_directions(parts: Parts, structure: Structure) -> Freedom:
     """Directions that supports leave free, numbered joint by joint."""
-    T = _basis(parts, structure.joints)
     N = structure.members
     one = np.ones(N)
     rows = np.concatenate([structure.start, structure.end])
     cols = np.tile(np.arange(N), 2)
+    # (J, N): -1 at the start of a member, +1 at its end.
     incidence = coo_array((np.concatenate([-one, one]), (rows, cols)), shape=(structure.joints, N)).tocsr()
-    G = csr_array(T.T @ kron(identity(3), incidence, format="csr"))
-    return Freedom(T, G, csr_array(G.T), incidence, _springs(parts, structure.joints))
+    return Freedom(_basis(parts, structure.joints), incidence, _springs(parts, structure.joints))
 
 
 def _basis(parts: Parts, J: int) -> csr_array:

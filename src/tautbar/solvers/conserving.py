@@ -83,7 +83,7 @@ class _Trial:
         motion, now, dt = self.motion, self.now, self.dt
         self.after: Stretch = motion.stretch(now.q + dq)
         self.forces: StepForce = self._forces(dq)
-        pull = motion.system.freedom.G @ (self.forces.g * self.forces.middle).ravel()
+        pull = motion.system.freedom.pull(self.forces.g * self.forces.middle)
         grounded = motion.system.spring @ (now.q + 0.5 * dq)
         drag = motion.drag(dq / dt, self.on)
         inertia = 2 * (motion.M @ (dq / dt) - self.inertia0) / dt

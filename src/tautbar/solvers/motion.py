@@ -12,12 +12,12 @@ from typing import NamedTuple, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.sparse import csr_array
 
 from tautbar.algebra.solver import Factor
 from tautbar.mechanics import members
 from tautbar.mechanics.damping import Rayleigh
 from tautbar.mechanics.members import Springs, Stretch
+from tautbar.mechanics.product import Product
 from tautbar.mechanics.pulses import EventForces
 from tautbar.solvers.system import System
 
@@ -68,18 +68,22 @@ class Motion:
     held: Array  # (3, N) m, member ends moved apart by held joints
     dead: Array  # (n,) N
     events: EventForces
-    joint_mass: csr_array  # (J, J) kg
+    joint_mass: Product  # (J, J) kg
     rayleigh: Rayleigh
     damper_blocks: Array  # (6, N) N s/m of each member while taut
     small: bool = False
 
     @cached_property
-    def M(self) -> csr_array:
-        return self.system.free_mass(self.joint_mass)
+    def M(self) -> Product:
+        return Product(self.system.free_mass(self.joint_mass.matrix))
 
     @cached_property
     def M_lower(self) -> Array:
-        return self.system.lower_of(self.M)
+        return self.system.lower_of(self.M.matrix)
+
+    @cached_property
+    def _has_mass(self) -> Flags:
+        return np.asarray(self.M.matrix.diagonal() > 0)
 
     @cached_property
     def tau(self) -> Array:
@@ -98,7 +102,7 @@ class Motion:
 
     def over_mass(self, force: Array) -> Array:
         """M^-1 force [m/s2]; zero for unknowns without mass, whose acceleration nothing decides."""
-        return np.where(self.M.diagonal() > 0, self._mass_factor.solve(force), 0.0)
+        return np.where(self._has_mass, self._mass_factor.solve(force), 0.0)
 
     def stretch(self, q: Array) -> Stretch:
         du = self.system.apart(q, self.held)
@@ -131,7 +135,7 @@ class Motion:
         force = self.rayleigh.mass_part * (self.M @ v)
         if self.rayleigh.stiffness_part:
             ends = _block_times(self.damper_blocks * on, self.system.apart(v))
-            force = force + self.system.freedom.G @ ends.ravel()
+            force = force + self.system.freedom.pull(ends)
         return np.asarray(force)
 
     def C_lower(self, on: Flags) -> Array:
@@ -161,7 +165,7 @@ class Motion:
         if self.rayleigh.stiffness_part:
             blocks = self.damper_blocks * self.carrying(st)
             ends = _block_times(blocks, system.apart(step.state.v))
-            needed = needed + (system.freedom.incidence @ ends.T).T
+            needed = needed + system.freedom.joint_pull(ends)
         return np.asarray(needed)
 
     def kinetic(self, v: Array) -> float:

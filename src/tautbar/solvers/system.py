@@ -15,6 +15,7 @@ from tautbar.mechanics import members
 from tautbar.mechanics.entries import GENERAL, SYMMETRIC, member_entries
 from tautbar.mechanics.freedom import Freedom, free_directions
 from tautbar.mechanics.mass import joint_mass_matrix
+from tautbar.mechanics.product import Product
 from tautbar.mechanics.structure import Structure, build
 from tautbar.model.parts import Parts
 
@@ -46,8 +47,8 @@ class System:
             self.pattern.nnz,
             6 * structure.members,
         )
-        self.spring = csr_array(spring)
-        self.spring_lower = self.lower_of(self.spring)
+        self.spring = Product(csr_array(spring))
+        self.spring_lower = self.lower_of(csr_array(spring))
         self.solver: Solver = choose_solver(self.pattern)
 
     @classmethod
@@ -90,20 +91,20 @@ class System:
 
     def apart(self, q: Array, held: Array | None = None) -> Array:
         """How far member ends moved apart (3, N) [m]; ``held`` (3, N) is the share of held joints."""
-        du = (self.freedom.GT @ q).reshape(3, -1)
-        return np.asarray(du if held is None else du + held)
+        du = self.freedom.apart(q)
+        return du if held is None else du + held
 
     def apart_held(self, move: Array) -> Array:
         """Share of held displacements (3, J) in `apart`."""
-        return np.asarray(move @ self.freedom.incidence)
+        return self.freedom.apart_of_joints(move)
 
     def pull(self, axial: Array, n: Array) -> Array:
         """Internal force (n,) [N] of member forces along unit vectors (3, N)."""
-        return np.asarray(self.freedom.G @ (axial * n).ravel())
+        return self.freedom.pull(axial * n)
 
     def joint_pull(self, axial: Array, n: Array) -> Array:
         """The same at all joints, (3, J) [N]."""
-        return np.asarray((self.freedom.incidence @ (axial * n).T).T)
+        return self.freedom.joint_pull(axial * n)
 
     def joint_mass(self, added: Array, lumped: bool) -> csr_array:
         """Mass between joints (J, J) [kg]; ``added`` (J,) are masses of load cases."""
