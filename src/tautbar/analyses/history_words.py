@@ -88,10 +88,15 @@ def _slack(run: HistoryRun) -> list[str]:
 def audit_lines(run: HistoryRun) -> tuple[str, ...]:
     """Evidence: the ledger in joules, and how hard the steps were."""
     t = run.tally
+
+    def joules(value: float) -> str:
+        return quantity(value if abs(value) > 1e-12 * t.turned_over else 0.0, "J")
+
+    caught = f"; the method took {joules(t.dissipated)} where slack members tightened"
     lines = [
-        f"energy ledger: {t.left_over:.1e} left over of {quantity(t.turned_over, 'J')} turned over",
-        f"events put in {quantity(t.event_work, 'J')}; damping took {quantity(t.damped, 'J')}; "
-        f"the method took {quantity(t.dissipated, 'J')} where slack members tightened",
+        f"energy ledger: {t.left_over:.1e} left over of {joules(t.turned_over)} turned over",
+        f"events put in {joules(t.event_work)}; damping took {joules(t.damped)}"
+        + (caught if run.context.system.structure.can_slack.any() else ""),
         f"{t.steps} steps, {t.iterations} iterations ({run.choices.method}, {run.context.system.solver.name})"
         + (f", halved up to {t.halvings} times" if t.halvings else ""),
     ]

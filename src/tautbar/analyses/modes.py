@@ -6,13 +6,13 @@ import time
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.sparse import csr_array
 
 from tautbar.algebra import eigen
 from tautbar.analyses.context import Context, Rest
 from tautbar.analyses.modes_words import audit_lines, outcome, warnings
 from tautbar.mechanics import members
 from tautbar.mechanics.mass import kinetic_energy_by_member
+from tautbar.mechanics.product import Product
 from tautbar.model.parts import Modes
 from tautbar.records.fields import Field, Record
 
@@ -29,12 +29,12 @@ def run_modes(context: Context, analysis: Modes) -> Record:
     rest, system = context.start(analysis.start), context.system
     lumped = analysis.mass == "lumped"
     joint_mass = system.joint_mass(rest.acting.mass, lumped)
-    M = system.free_mass(joint_mass)
+    M = Product(system.free_mass(joint_mass))
     K, one_sided = _tangent(context, rest)
     up_to = None if analysis.up_to is None else (2 * np.pi * analysis.up_to) ** 2
     found = eigen.lowest_modes(
         K,
-        system.lower_of(M),
+        system.lower_of(M.matrix),
         system.pattern,
         count=analysis.count if up_to is None else None,
         up_to=up_to,
@@ -70,7 +70,7 @@ def _tangent(context: Context, rest: Rest) -> tuple[Array, NDArray[np.bool_]]:
     return potential.curvature(look), members.taut(sp, e) & ~members.firmly_taut(sp, e)
 
 
-def _fields(context: Context, found: eigen.Modes, M: csr_array, lumped: bool) -> dict[str, Field]:
+def _fields(context: Context, found: eigen.Modes, M: Product, lumped: bool) -> dict[str, Field]:
     system = context.system
     value = found.eigenvalue
     unstable = max(found.negative, 0)  # -1 where it could not be counted
@@ -106,17 +106,17 @@ def _rigid(context: Context) -> Array:
     return np.stack([context.system.freedom.gather(np.outer(d, np.ones(J))) for d in np.eye(3)], axis=1)
 
 
-def _participation(context: Context, found: eigen.Modes, M: csr_array) -> Array:
+def _participation(context: Context, found: eigen.Modes, M: Product) -> Array:
     return np.asarray(found.shape.T @ (M @ _rigid(context)))
 
 
-def _free_mass(context: Context, M: csr_array) -> Array:
+def _free_mass(context: Context, M: Product) -> Array:
     one = _rigid(context)
     return np.asarray((one * (M @ one)).sum(axis=0))
 
 
 def _energy_shares(
-    context: Context, shape: Array, found: eigen.Modes, M: csr_array, lumped: bool
+    context: Context, shape: Array, found: eigen.Modes, M: Product, lumped: bool
 ) -> tuple[list[str], Array]:
     """Share of each mode's kinetic energy in each group of members (mass at joints: the last column)."""
     system, groups = context.system, context.parts.members.groups
