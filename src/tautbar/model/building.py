@@ -1,0 +1,183 @@
+"""From the words of a model to its parts, with every mistake noted on the way."""
+
+from __future__ import annotations
+
+from array import array
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Any
+
+from tautbar.model import format as fmt
+from tautbar.model.acting import Actions, build_loadings
+from tautbar.model.asking import Questions, why_state_matters
+from tautbar.model.checking import Checker
+from tautbar.model.lookup import Finder
+from tautbar.model.materials import build_materials, build_sections
+from tautbar.model.mistakes import Mistakes
+from tautbar.model.parts import AXES, Parts
+from tautbar.model.positions import Path
+from tautbar.model.prestress import check_lengths
+from tautbar.model.soundness import Soundness
+from tautbar.model.source import Source
+from tautbar.model.spec import Quantity, Spec
+from tautbar.model.structure import Drawing
+from tautbar.model.tables import Columns, read_columns
+from tautbar.units import NUMBER, TIME, BadQuantity, Units, unit_factor
+
+_PULSE_COLUMNS: dict[str, Spec] = {
+    "time": Quantity(dimension=TIME, at_least=0, required=True),
+    "factor": Quantity(dimension=NUMBER, required=True),
+}
+
+
+@dataclass
+class Built:
+    """A model that has no mistake, and the paths its joints and members came from."""
+
+    parts: Parts
+    drawing: Drawing
+
+
+def build(source: Source) -> Built:
+    """The parts of a model. Raises `ModelError` with every mistake in it."""
+    mistakes = Mistakes()
+    words = source.words
+    plane = words.get("plane")
+    axes = tuple(AXES.index(a) for a in plane) if plane in fmt.PLANES else (0, 1, 2)
+    checker = Checker(_units(words.get("units"), mistakes), axes, mistakes)
+    checked = checker.check(fmt.MODEL, dict(words), ())
+    if checked["format"] not in (None, 1):
+        mistakes.add(
+            ("format",), f"format {checked['format']} is not known to this version", "write format = 1"
+        )
+    built = _Builder(source, checker, checked).build()
+    source.aliases = {
+        "joints": dict(zip(built.drawing.joint_names, built.drawing.joint_paths, strict=True)),
+        "members": dict(zip(built.drawing.names, built.drawing.paths, strict=True)),
+    }
+    mistakes.raise_any(source)
+    return built
+
+
+def _units(given: Any, mistakes: Mistakes) -> Units:
+    factors: dict[str, float] = {}
+    names: dict[str, str] = {}
+    for base, text in given.items() if isinstance(given, Mapping) else ():
+        if base in fmt.MODEL.fields["units"].fields and isinstance(text, str):  # type: ignore[attr-defined]
+            try:
+                factors[base], names[base] = unit_factor(text, base), text
+            except BadQuantity as error:
+                mistakes.add(("units", base), str(error))
+    return Units(factors, names)
+
+
+@dataclass
+class _Builder:
+    source: Source
+    checker: Checker
+    checked: dict[str, Any]
+
+    def build(self) -> Built:
+        words, mistakes = self.checked, self.checker.mistakes
+        materials = build_materials(self._of("materials"))
+        sections = build_sections(self._of("sections"), materials, set(self._of("materials")), mistakes)
+        drawing = self._draw({name: i for i, name in enumerate(sections)})
+        joints, members = drawing.finish()
+        drawn = len(joints) - sum(len(h.joints) for h in members.hanging)
+        find_joints = Finder("joint", joints.index, mistakes, drawn=drawn)
+        find_members = Finder("member", members.index, mistakes, members.groups)
+        acting = Actions(
+            mistakes, find_joints, find_members, members.hanging, self.checker.axes, words.get("temperature")
+        )
+        cases = acting.load_cases(self._of("load_cases"))
+        loadings = build_loadings(cases, self._of("combinations"), mistakes)
+        questions = Questions(
+            mistakes,
+            cases,
+            loadings,
+            self._of("events"),
+            find_joints,
+            find_members,
+            why_state_matters(members),
+        )
+        parts = Parts(
+            words["title"],
+            joints,
+            members,
+            tuple(sections.values()),
+            tuple(materials.values()),
+            acting.supports(words.get("supports") or []),
+            acting.masses(words.get("masses") or []),
+            cases,
+            loadings,
+            acting.events(self._of("events"), self._pulse_tables()),
+            questions.build(words.get("analyses") or []),
+            self._held_axis(),
+            self._up(),
+            words["gravity"],
+            words.get("temperature"),
+            words.get("unsupported") == "allowed",
+            words.get("note") or "",
+            words.get("source") or "",
+        )
+        Soundness(parts, drawing, mistakes, self._asked()).check()
+        check_lengths(parts, drawing, mistakes)
+        return Built(parts, drawing)
+
+    def _asked(self) -> list[list[str]]:
+        """The events that each analysis names, as written, so that a wrong one still uses them."""
+        entries = self.source.words.get("analyses")
+        named = [e.get("events") for e in entries if isinstance(e, dict)] if isinstance(entries, list) else []
+        return [events if isinstance(events, list) else [] for events in named]
+
+    def _of(self, key: str) -> dict[str, Any]:
+        return self.checked.get(key) or {}
+
+    def _draw(self, sections: dict[str, int]) -> Drawing:
+        axes = self.checker.axes
+        joint_columns = {
+            k: of for k, of in fmt.JOINT_COLUMNS.items() if k not in AXES or AXES.index(k) in axes
+        }
+        drawing = Drawing(self.checker.mistakes, sections)
+        drawing.add_joints(self._of("joints"), self._table("joints", joint_columns), axes)
+        drawing.add_members(self.checked.get("members") or [], self._table("members", fmt.MEMBER_COLUMNS))
+        return drawing
+
+    def _table(self, key: str, columns: dict[str, Spec]) -> Columns | None:
+        name = self._of("tables").get(key)
+        return None if name is None else self._columns(name, columns, ("tables", key))
+
+    def _columns(self, name: str, columns: dict[str, Spec], path: Path) -> Columns | None:
+        try:
+            text = self.source.load(name)
+        except UnicodeDecodeError as error:
+            self.checker.wrong(path, f"'{name}' is not in UTF-8: {error.reason}", "save it as UTF-8")
+        except OSError as error:
+            self.checker.wrong(path, f"'{name}' cannot be read: {error.strerror}")
+        else:
+            return read_columns(self.checker, text, columns, path)
+        return None
+
+    def _pulse_tables(self) -> dict[str, tuple[array[float], array[float]]]:
+        found = {}
+        for name, event in self._of("events").items():
+            file = event.get("table") if event is not None else None
+            if isinstance(file, str):
+                columns = self._columns(file, _PULSE_COLUMNS, ("events", name, "table"))
+                empty = array("d")
+                numbers = columns.numbers if columns is not None else {}
+                found[name] = (numbers.get("time", empty), numbers.get("factor", empty))
+        return found
+
+    def _held_axis(self) -> int | None:
+        return None if len(self.checker.axes) == 3 else 3 - sum(self.checker.axes)
+
+    def _up(self) -> int:
+        axes = self.checker.axes
+        given = self.checked.get("up")
+        if given is None:
+            return axes[-1] if len(axes) == 2 else 2
+        up = AXES.index(given)
+        if up not in axes:
+            self.checker.wrong(("up",), f"'{given}' is not in the plane of this model")
+        return up

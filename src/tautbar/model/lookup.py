@@ -1,0 +1,89 @@
+"""Finding joints and members by names, groups and patterns such as ``stay-*``."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass, field
+
+from tautbar.model.mistakes import Mistakes, near
+from tautbar.model.parts import Indices
+from tautbar.model.positions import Path
+
+
+def is_pattern(name: str) -> bool:
+    """Does the name stand for all that match it?"""
+    return "*" in name or "?" in name
+
+
+def matching(pattern: str, names: Iterable[str]) -> list[str]:
+    """The names that match; ``*`` is any text, ``?`` one sign."""
+    text = "".join({"*": ".*", "?": "."}.get(sign, re.escape(sign)) for sign in pattern)
+    fits = re.compile(text).fullmatch
+    return [name for name in names if fits(name)]
+
+
+@dataclass
+class Finder:
+    """Positions of joints or of members by name.
+
+    ``groups`` are positions by the name of a group; names from position ``drawn`` on (joints
+    between the pieces of hanging members) are matched only by patterns that contain "@".
+    """
+
+    what: str  # "joint" or "member"
+    index: Mapping[str, int]
+    mistakes: Mistakes
+    groups: Mapping[str, Indices] = field(default_factory=dict)
+    drawn: int | None = None
+    _known: dict[str, Indices] = field(default_factory=dict)
+
+    def find(self, names: Iterable[str] | None, path: Path) -> Indices:
+        """Positions of all that are named, each once, in the order they are named."""
+        found: dict[int, None] = {}
+        for i, name in enumerate(names or ()):
+            found.update(dict.fromkeys(self.one(name, (*path, i))))
+        return tuple(found)
+
+    def one(self, name: str, path: Path) -> Indices:
+        """Positions a single name, group or pattern stands for; a mistake if there are none."""
+        if name not in self._known:
+            self._known[name] = self._look(name)
+        if not self._known[name]:
+            if is_pattern(name):
+                self.mistakes.add(
+                    path, f"the pattern '{name}' matches no {self.what}", near(name, self._all())
+                )
+            else:
+                self.mistakes.add(path, f"there is no {self.what} '{name}'", near(name, self._all()))
+        return self._known[name]
+
+    def _all(self) -> list[str]:
+        return [*self.groups, *self.index]
+
+    def _look(self, name: str) -> Indices:
+        if name in self.index:
+            return (self.index[name],)
+        if name in self.groups:
+            return self.groups[name]
+        if not is_pattern(name):
+            return ()
+        last = self.drawn if self.drawn is not None and "@" not in name else len(self.index)
+        found = {self.index[n] for n in matching(name, self.index)}
+        for group in matching(name, self.groups):
+            found.update(self.groups[group])
+        return tuple(sorted(i for i in found if i < last))
+
+
+def groups_of(names: Iterable[str], index: Mapping[str, int]) -> dict[str, Indices]:
+    """Groups by dotted names: ``bottom`` is all of ``bottom.1``, ``bottom.2``, ..."""
+    groups: dict[str, list[int]] = {}
+    for position, name in enumerate(names):
+        head = name
+        while "." in head:
+            head, _, number = head.rpartition(".")
+            if not number.isdigit() or not head:
+                break
+            if head not in index:
+                groups.setdefault(head, []).append(position)
+    return {name: tuple(members) for name, members in groups.items()}
