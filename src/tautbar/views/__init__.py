@@ -1,0 +1,1 @@
+"""What people see: answers in words and plots, all from the results file alone."""
