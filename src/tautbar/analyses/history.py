@@ -17,7 +17,7 @@ from tautbar.mechanics.damping import Rayleigh, rayleigh
 from tautbar.mechanics.product import Product
 from tautbar.mechanics.pulses import event_forces
 from tautbar.model.parts import History, Loading
-from tautbar.records.fields import Record
+from tautbar.records.fields import Field, Record
 from tautbar.records.frames import Frame, StreamedField
 from tautbar.solvers.conserving import EnergyConserving
 from tautbar.solvers.march import Marched, march, step_times
@@ -175,6 +175,19 @@ class HistoryRun:
         members = slice(None) if store.members is None else list(store.members)
         return {k: v[members if k == "axial_force" else joints] for k, v in values.items()}
 
+    def _names_stored(self) -> dict[str, Field]:
+        """Names along the axes of a history that stores some joints or members only."""
+        out: dict[str, Field] = {}
+        store, context = self.analysis.store, self.context
+        for axis, which, names in (
+            ("stored_joint", store.joints, context.joint_names),
+            ("stored_member", store.members, context.member_names),
+        ):
+            if which is not None:
+                kept = np.array([names[i] for i in which], dtype=np.object_)
+                out[axis] = Field(kept, "1", f"{axis.removeprefix('stored_')}s stored", (axis,))
+        return out
+
     def record(self, status_if_cut: str | None = None) -> Record:
         """Peaks, slack episodes and audit of the steps marched so far."""
         faults = self.tally.faults(self.failure)
@@ -188,7 +201,7 @@ class HistoryRun:
             outcome=outcome(self, faults, status),
             acting=self.acting,
             settings=self.settings,
-            fields=self.tally.fields(),
+            fields=self.tally.fields() | self._names_stored(),
             audit_lines=audit_lines(self),
             warnings=warnings(self),
             sources=(SOURCES[self.choices.method],),

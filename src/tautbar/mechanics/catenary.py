@@ -156,7 +156,7 @@ def length_for_sag(wanted: float, EA: float, w: float, x: float, z: float) -> fl
 
 
 def length_for_tension(wanted: float, EA: float, w: float, x: float, z: float) -> float:
-    """Longest unstressed length [m] with the wanted tension [N] at the lower end.
+    """Shortest unstressed length [m] with the wanted tension [N] at the lower end.
 
     Raises
     ------
