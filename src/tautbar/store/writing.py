@@ -81,8 +81,8 @@ class ResultsWriter:
     def finish(self, record: Record) -> None:
         """Write the last steps of the history at hand and the rest of its record."""
         with self._writing():
+            _write_record(self._group(record.name), record)  # may name the axes of the steps
             self._stream.finish()
-            _write_record(self._group(record.name), record)
 
     def publish(self) -> None:
         """Close the file and put it in place."""
