@@ -96,7 +96,7 @@ class Questions:
             data["geometry"],
             data.get("steps"),
             data["tolerance"],
-            data["folding"],
+            data.get("folding") == "allowed",
             **common,
         )
 

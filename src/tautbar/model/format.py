@@ -257,7 +257,7 @@ STATIC = Table(
         "geometry": _GEOMETRY,
         "steps": Count(doc="number of load steps; absent: as many as it takes"),
         "tolerance": Quantity(above=0, below=1, default=1e-9, doc="share of the forces left unbalanced"),
-        "folding": Flag(default=False, doc="may bars turn more than 30 degrees?"),
+        "folding": Text(choices=("allowed",), doc="bars may turn more than 30 degrees"),
     },
     later=(*_LATER_ANYWHERE, "yielding", "lose_in_turn"),
 )

@@ -23,6 +23,7 @@ class Prestressed:
     given: str
     force: float  # NaN where the section is wrong; inf where the length is impossible
     section: Section
+    length: float  # as drawn, m
 
 
 def drawn_length(parts: Parts, start: int, end: int) -> float:
@@ -48,7 +49,7 @@ def prestressed(parts: Parts) -> Iterator[Prestressed]:
             if value == value and m.section[i] >= 0:
                 section = parts.sections[m.section[i]]
                 length = drawn_length(parts, m.start[i], m.end[i])
-                yield Prestressed(i, given, _force(section, length, given, value), section)
+                yield Prestressed(i, given, _force(section, length, given, value), section, length)
 
 
 def _force(section: Section, length: float, given: str, value: float) -> float:
@@ -94,6 +95,9 @@ def _impossible(p: Prestressed, members: Members) -> str:
     stiffness = p.section.axial_stiffness
     if p.given == "pretension" and stiffness is not None and p.force <= -stiffness:
         return f"a compression of {_newtons(-p.force)} is more than its axial stiffness: no length gives it"
+    spring = p.section.stiffness or math.inf
+    if p.given == "pretension" and p.force >= spring * p.length:
+        return f"a tension of {_newtons(p.force)} would need an elongation of its whole length"
     return ""
 
 

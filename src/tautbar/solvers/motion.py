@@ -152,9 +152,11 @@ class Motion:
         """The state at t = 0 as a step that took no time, in balance with what acts just after it."""
         st = self.stretch(q)
         axial, _ = self.axial(st, v)
-        load = self.dead + self.event_force(0.0, 0.5 * first_step)
+        corners = self.events.corners()
+        inside = 0.5 * float(np.append(corners[corners > 1e-9 * first_step], first_step).min())
+        load = self.dead + self.event_force(0.0, inside)
         a = self.over_mass(load - self.internal(q, st, axial) - self.drag(v, self.carrying(st)))
-        return Step(State(0.0, q, v, a, a), st, axial, 0.0, 0.0, 0.0, 0, 0.0, 0.5 * first_step)
+        return Step(State(0.0, q, v, a, a), st, axial, 0.0, 0.0, 0.0, 0, 0.0, inside)
 
     def joint_forces(self, step: Step, V: Array, A: Array) -> Array:
         """What every joint (3, J) needs [N]: member pull, inertia and damping, springs left out."""
