@@ -351,12 +351,12 @@ IN_TYPES = {
         'analysis "lantern dropped": store.every',
         "a whole number is wanted, not the number 0.5",
     ),
-    "flag": (
+    "folding": (
         'loads = "service"',
         'loads = "service"\nfolding = "yes"',
         "folding",
         'analysis "in service": folding',
-        "true or false is wanted, not the text 'yes'",
+        "'yes' is not one of the words known here (known: allowed)",
     ),
     "no kind": (
         'kind = "pulse"\n',

@@ -78,6 +78,9 @@ class _Trial:
         self.per_v = method.gamma / (method.beta * dt)
         self.per_a = 1.0 / (method.beta * dt * dt)
         self.first = dt * now.v + 0.5 * dt * dt * a0  # the increment if the acceleration stays
+        self.thrown = self.per_a * float(
+            np.abs(motion.M @ self.first).max(initial=0.0)
+        )  # N, rounds in free flight
         self.a0 = a0
         self.residual = load
         self.enough = 0.0
@@ -99,7 +102,7 @@ class _Trial:
         self.residual = self.load - inertia - drag - internal
         largest = sum(float(np.abs(x).max(initial=0.0)) for x in (self.load, inertia, drag, internal))
         k = float(motion.springs.k.max(initial=0.0))
-        floor = 8 * np.finfo(float).eps * k * float(np.abs(q).max(initial=0.0))
+        floor = 8 * np.finfo(float).eps * (k * float(np.abs(q).max(initial=0.0)) + self.thrown)
         self.enough = max(TOLERANCE * largest, floor)
         return self
 
