@@ -292,7 +292,7 @@ def test_residual_and_orthogonality_measure_what_is_wrong():
     right = lowest_modes(lower, mass, pattern, count=3)
     wrong = right.shape + np.outer(np.arange(6.0), [1e-3, 0.0, 1e-2])
     value = right.eigenvalue + np.array([0.0, 1e-3, 0.0])
-    judged = eigen._judged(pencil, eigen._Pairs(value, wrong), 3, 3, True)
+    judged = eigen._judged(pencil, eigen._Pairs(value, wrong), 3, 3, True, 0.0)
     stiffness = dense_of((pattern, lower))
     x = wrong / np.sqrt(2.0 * np.sum(wrong**2, axis=0))
     force, inertia = stiffness @ x, 2.0 * x

@@ -345,3 +345,16 @@ def test_suspended_cable_against_another_program(lambda2: float, quantity: str) 
     state = tautbar.solve_static(model, "weight")
     f = tautbar.find_modes(model, state, count=1, mass="lumped")["frequency"][0]
     assert 2 * f * 100.0 / np.sqrt(H) == pytest.approx(values("C07")[quantity]["computed"], rel=1e-4)
+
+
+@pytest.mark.parametrize("stiff", [1e7, 1e9])
+def test_the_slow_sway_of_a_stiff_chain_is_no_mechanism(stiff: float) -> None:
+    """C08 again, for ropes as stiff as real ones: a frequency must not be rounded to 0 Hz.
+
+    1e-4: the discretisation error of mode 1 (2e-5) and what rounding of EA leaves in K.
+    """
+    model = chain(160, stiff=stiff)
+    state = tautbar.solve_static(model, {"weight": 1.0})
+    modes = tautbar.find_modes(model, state, count=2)
+    assert 2 * np.pi * modes["frequency"][0] / np.sqrt(G) == pytest.approx(1.202412779, rel=1e-4)
+    assert int(modes["audit/zero_modes"]) == 0

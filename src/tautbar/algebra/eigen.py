@@ -26,6 +26,10 @@ _RESTARTS = {"rng": 20} if "rng" in signature(eigsh).parameters else {}
 """Newer scipy draws the vectors of a restart at random; a seed keeps every run the same."""
 
 
+_ROUNDING = 64.0 * float(np.finfo(float).eps)
+"""An eigenvalue within this share of |x|.|K||x| is zero: sums of up to a few dozen entries a row."""
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class Modes:
     """Eigenpairs in rising order and what proves them.
@@ -119,15 +123,15 @@ def lowest_modes(
         raise ValueError("give a count of modes or a highest eigenvalue")
     pencil = Pencil(stiffness_lower, mass_lower, pattern, solver or choose_solver(pattern), greatest)
     if pencil.finite == 0:
-        return _judged(pencil, _nothing(pencil), 0, 0, True)
+        return _judged(pencil, _nothing(pencil), 0, 0, True, 0.0)
     inverse = _Inverse(pencil, *pencil.positive_shift())
     wanted = pencil.finite if count is None else min(count, pencil.finite)
     below = None if up_to is None else pencil.count_below(up_to)
     if below is not None:
         wanted = min(wanted, below)
     if wanted == 0:
-        return _judged(pencil, _nothing(pencil), 0, 0, up_to is None or below is not None)
-    return _judged(pencil, *_search(inverse, wanted))
+        return _judged(pencil, _nothing(pencil), 0, 0, up_to is None or below is not None, 0.0)
+    return _judged(pencil, *_search(inverse, wanted), inverse.shift)
 
 
 def _nothing(pencil: Pencil) -> _Pairs:
@@ -227,7 +231,9 @@ def _all_pairs(inverse: _Inverse) -> _Pairs:
     return _Pairs(np.concatenate((sharp.value, value[low:])), np.column_stack((sharp.shape, shape[:, low:])))
 
 
-def _judged(pencil: Pencil, pairs: _Pairs, wanted: int, below: int, complete: bool) -> Modes:
+def _judged(
+    pencil: Pencil, pairs: _Pairs, wanted: int, below: int, complete: bool, shift: float
+) -> Modes:
     """The wanted pairs, normalised, with their residuals and counts."""
     value, shape = pairs.value[:wanted], _normalised(pencil, pairs.shape[:, :wanted])
     force = pencil.stiffness @ shape
@@ -235,9 +241,10 @@ def _judged(pencil: Pencil, pairs: _Pairs, wanted: int, below: int, complete: bo
     largest = np.linalg.norm(pencil.magnitude @ np.abs(shape), axis=0)
     moved = np.linalg.norm(force, axis=0)
     heaviest = pencil.greatest * np.linalg.norm(pencil.mass @ shape, axis=0)
-    scale = np.where(np.abs(value) <= pencil.zero_width, heaviest, moved)
+    width = _ROUNDING * (np.sum(np.abs(shape) * (pencil.magnitude @ np.abs(shape)), axis=0) + shift)
+    scale = np.where(np.abs(value) <= width, heaviest, moved)
     gram = shape.T @ (pencil.mass @ shape)
-    negative, zero = pencil.signs() or (-1, -1)
+    negative, zero = _signs(pencil, value, width, complete)
     return Modes(
         eigenvalue=value,
         shape=shape,
@@ -249,6 +256,18 @@ def _judged(pencil: Pencil, pairs: _Pairs, wanted: int, below: int, complete: bo
         zero=zero,
         negative=negative,
     )
+
+
+def _signs(pencil: Pencil, value: FloatArray, width: FloatArray, complete: bool) -> tuple[int, int]:
+    """Numbers of negative and of zero eigenvalues of the whole structure; -1 if not countable.
+
+    One is zero where rounding of K alone would give as much in its own shape: a slow sway of a stiff
+    rope is none, however great the greatest eigenvalue. Where only such ones are known, or some may
+    be missing, pivots on both sides of zero count the rest.
+    """
+    if complete and value.size and value[-1] > width[-1]:
+        return int(np.count_nonzero(value < -width)), int(np.count_nonzero(np.abs(value) <= width))
+    return pencil.signs() or (-1, -1)
 
 
 def _normalised(pencil: Pencil, shape: FloatArray) -> FloatArray:
