@@ -53,7 +53,7 @@ class Tally:
         for key, peaks in self.peaks.items():
             peaks.update(step.state.t, values[key])
         sp = self.motion.springs
-        self.slack.update(step.state.t, -sp.sigma * step.stretch.e, step.axial)
+        self.slack.update(step.state.t, -sp.sigma * step.stretch.e - sp.at_length, step.axial)
         self.steps += marched.number != 0
         self.iterations += step.iterations
         self.halvings = max(self.halvings, marched.halvings)
@@ -79,8 +79,10 @@ class Tally:
 
     @property
     def left_over(self) -> float:
-        """Largest unaccounted energy as a share of the energy turned over."""
-        return self.worst / self.turned_over if self.turned_over > 0 else 0.0
+        """Largest unaccounted energy as a share of the energy turned over (or in rounding of lengths)."""
+        sp = self.motion.springs
+        over = max(self.turned_over, 0.5 * float(sp.k.max(initial=0.0)) * sp.at_length**2)
+        return self.worst / over if over > 0 else 0.0
 
     def faults(self, failure: str) -> list[str]:
         """What is wrong with the run, in words; empty where the audit holds."""

@@ -53,7 +53,7 @@ class EnergyConserving:
         q, v, st = now.q + dq, 2 * dq / dt - now.v, trial.after
         axial, _ = motion.axial(st, v)
         load = motion.dead + motion.event_force(t, 0.5 * (now.t + t))
-        a = motion.over_mass(load - motion.internal(q, st, axial) - motion.drag(v, trial.on))
+        a = motion.over_mass(load - motion.internal(q, st, axial) - motion.drag(v, motion.carrying(st)))
         lost, by_viscosity = trial.forces.lost, trial.viscous_share
         dragged = float(motion.drag(dq / dt, trial.on) @ dq)
         damped = dragged + float(lost @ by_viscosity)

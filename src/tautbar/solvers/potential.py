@@ -82,9 +82,10 @@ class Potential:
         return lower
 
     def scale(self, look: Look) -> float:
-        """The largest of applied joint load and member force [N], never quite zero."""
+        """The largest of applied joint load and member force [N], no less than rounding of lengths makes."""
         largest = max(np.abs(self.force).max(initial=0.0), np.abs(look.axial).max(initial=0.0))
-        return float(largest) or 1e-12 * float(self.springs.k.max(initial=1.0)) * self.system.structure.size
+        rounding = 1e-12 * float(self.springs.k.max(initial=1.0)) * self.system.structure.size
+        return max(float(largest), rounding)
 
     def balanced(self, look: Look, tolerance: float) -> bool:
         """Is the residual within ``tolerance`` of the scale, or at the rounding of the largest force?
