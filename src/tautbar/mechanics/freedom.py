@@ -11,11 +11,12 @@ from numpy.typing import NDArray
 from scipy.sparse import coo_array, csr_array, identity, kron
 
 from tautbar.mechanics.product import Product
-from tautbar.mechanics.structure import Structure
+from tautbar.mechanics.structure import Stage, Structure
 from tautbar.model.parts import Parts, Support
 
 Array = NDArray[np.float64]
 Index = NDArray[np.intp]
+Flags = NDArray[np.bool_]
 
 
 class Freedom:
@@ -76,35 +77,56 @@ class Freedom:
         """Force that displaced joints (3, J) [m] put into the springs to ground (3, J) [N]."""
         return (self._spring @ displacement.ravel()).reshape(3, -1)
 
+    def reaction(self, needed: Array, load: Array, stretched: Array) -> Array:
+        """Forces of supports on the structure (3, J) [N], springs included.
 
-def free_directions(parts: Parts, structure: Structure) -> Freedom:
-    """Directions that supports leave free, numbered joint by joint."""
+        Parameters
+        ----------
+        needed, load : (3, J)
+            What the members (and inertia and damping) need at each joint, and what acts there [N].
+        stretched : (3, J)
+            How far each joint is from where its springs are without force [m].
+        """
+        spring = self.grounded(stretched)
+        return self.held_part(needed - load + spring) - spring
+
+
+def free_directions(parts: Parts, structure: Structure, stage: Stage, pushing: Flags) -> Freedom:
+    """Directions that supports leave free, numbered joint by joint.
+
+    ``pushing`` (3, J) are the directions in which supports that only push hold now. A joint at which
+    no member is present is held: it is not there yet, or no more.
+    """
+    supports = tuple(s for s, there in zip(parts.supports, stage.supports, strict=True) if there)
+    gone = np.ones(structure.joints, dtype=bool)
+    gone[structure.start[stage.members]] = gone[structure.end[stage.members]] = False
+    held = pushing.T | gone[:, None]
+    if parts.held_axis is not None:
+        held[:, parts.held_axis] = True
     N = structure.members
     one = np.ones(N)
     rows = np.concatenate([structure.start, structure.end])
     cols = np.tile(np.arange(N), 2)
     # (J, N): -1 at the start of a member, +1 at its end.
     incidence = coo_array((np.concatenate([-one, one]), (rows, cols)), shape=(structure.joints, N)).tocsr()
-    return Freedom(_basis(parts, structure.joints), incidence, _springs(parts, structure.joints))
+    return Freedom(_basis(supports, held), incidence, _springs(supports, structure.joints))
 
 
-def _basis(parts: Parts, J: int) -> csr_array:
-    held = np.zeros((J, 3), dtype=bool)
-    if parts.held_axis is not None:
-        held[:, parts.held_axis] = True
-    for support in parts.supports:
+def _basis(supports: tuple[Support, ...], held: Flags) -> csr_array:
+    for support in supports:
         held[np.ix_(np.array(support.joints, dtype=np.intp), np.array(support.fixed, dtype=np.intp))] = True
-    inclined = _inclined(parts.supports)
+    inclined = _inclined(supports)
     free = ~held
     free[list(inclined)] = False
     joint, axis = np.nonzero(free)
-    value = np.ones(joint.size)
+    joints, axes, values = [joint], [axis], [np.ones(joint.size)]
     for j, normals in inclined.items():
         basis = _complement(np.vstack([np.eye(3)[held[j]], *normals]))
-        joint = np.append(joint, np.full(basis.size, j))
-        axis = np.append(axis, np.tile(np.arange(3), len(basis)))
-        value = np.append(value, basis.ravel())
-    return _numbered(joint, axis, value, int(free.sum()), J)
+        joints.append(np.full(basis.size, j))
+        axes.append(np.tile(np.arange(3), len(basis)))
+        values.append(basis.ravel())
+    entries = np.concatenate(joints), np.concatenate(axes), np.concatenate(values)
+    return _numbered(*entries, int(free.sum()), len(held))
 
 
 def _numbered(joint: Index, axis: Index, value: Array, plain: int, J: int) -> csr_array:
@@ -133,11 +155,20 @@ def _complement(held: Array) -> Array:
     return np.asarray(Vt[int((s > 1e-12).sum()) :])
 
 
-def _springs(parts: Parts, J: int) -> csr_array:
+def _springs(supports: tuple[Support, ...], J: int) -> csr_array:
     rows, values = [], []
-    for support in parts.supports:
+    for support in supports:
         for axis, k in support.springs:
             rows += [axis * J + j for j in support.joints]
             values += [k] * len(support.joints)
     at = np.array(rows, dtype=np.intp)
     return coo_array((np.array(values, dtype=float), (at, at)), shape=(3 * J, 3 * J)).tocsr()
+
+
+def pushers(parts: Parts, stage: Stage, J: int) -> Flags:
+    """Directions (3, J) with a support that only pushes: along its axis, upwards or positive."""
+    out = np.zeros((3, J), dtype=bool)
+    for support, there in zip(parts.supports, stage.supports, strict=True):
+        if there and support.only_pushes is not None:
+            out[support.only_pushes, list(support.joints)] = True
+    return out

@@ -11,14 +11,15 @@ from tautbar.mechanics.structure import Structure
 Array = NDArray[np.float64]
 
 
-def joint_mass_matrix(structure: Structure, added: Array, lumped: bool) -> csr_array:
+def joint_mass_matrix(structure: Structure, added: Array, coat: Array, lumped: bool) -> csr_array:
     """Mass between joints [kg], (J, J).
 
     Consistent: (m L0/6)[[2, 1], [1, 2]] a member, so that every rigid translation has exactly the true
-    mass; lumped: m L0/2 at each end. ``added`` (J,) [kg] are masses of load cases, beside the model's.
+    mass; lumped: m L0/2 at each end. ``added`` (J,) [kg] are masses of load cases, beside the model's,
+    ``coat`` (N,) [kg/m] ice on members, to their m.
     """
     s = structure
-    whole = s.m * s.L0
+    whole = (s.m + coat * s.present) * s.L0
     own, cross = (whole / 2, np.zeros_like(whole)) if lumped else (whole / 3, whole / 6)
     joint = np.arange(s.joints)
     row = np.concatenate([s.start, s.end, s.start, s.end, joint])
@@ -30,11 +31,12 @@ def joint_mass_matrix(structure: Structure, added: Array, lumped: bool) -> csr_a
     return M
 
 
-def kinetic_energy_by_member(structure: Structure, velocity: Array, lumped: bool) -> Array:
+def kinetic_energy_by_member(structure: Structure, coat: Array, velocity: Array, lumped: bool) -> Array:
     """Twice the kinetic energy of each member [J], (N,), for joint velocities (3, J) [m/s]."""
     s = structure
     v1, v2 = velocity[:, s.start], velocity[:, s.end]
     squares = (v1 * v1).sum(axis=0) + (v2 * v2).sum(axis=0)
+    whole = (s.m + coat * s.present) * s.L0
     if lumped:
-        return np.asarray(s.m * s.L0 / 2 * squares)
-    return np.asarray(s.m * s.L0 / 3 * (squares + (v1 * v2).sum(axis=0)))
+        return np.asarray(whole / 2 * squares)
+    return np.asarray(whole / 3 * (squares + (v1 * v2).sum(axis=0)))

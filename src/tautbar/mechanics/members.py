@@ -15,6 +15,7 @@ from tautbar.mechanics.structure import BAR, STRUT, Structure
 
 Array = NDArray[np.float64]
 Flags = NDArray[np.bool_]
+NOT_THERE = 1e6  # m: how loose a member is that is not there
 EXACT = 1e-12  # of the model's size: a tie this near its unstressed length is at it
 
 
@@ -51,8 +52,9 @@ def springs(structure: Structure, take_up: Array | None = None, heating: Array |
     longer = (s.L0 - shorter) * warmer - shorter
     L0 = s.L0 + longer
     sigma = np.where(s.kind == STRUT, -1.0, 1.0)
-    EA = s.EA  # of the section: a rope cut shorter is stiffer
-    return Springs(s.r0, s.length, L0, s.stretch0 - longer, EA / L0, sigma, s.kind == BAR, EXACT * s.size)
+    k = np.where(s.present, s.EA / L0, 0.0)  # EA is the section's: a rope cut shorter is stiffer
+    e0 = np.where(s.present, s.stretch0 - longer, -sigma * NOT_THERE)
+    return Springs(s.r0, s.length, L0, e0, k, sigma, (s.kind == BAR) & s.present, EXACT * s.size)
 
 
 def stretch(sp: Springs, du: Array) -> Stretch:
@@ -106,6 +108,13 @@ def tangent(n: Array, along: Array, across: Array) -> Array:
     return np.stack(
         [a * x * x + across, a * y * y + across, a * z * z + across, a * x * y, a * x * z, a * y * z]
     )
+
+
+def block_times(blocks: Array, v: Array) -> Array:
+    """Symmetric blocks xx, yy, zz, xy, xz, yz (6, N) times vectors (3, N)."""
+    xx, yy, zz, xy, xz, yz = blocks
+    x, y, z = v
+    return np.stack([xx * x + xy * y + xz * z, xy * x + yy * y + yz * z, xz * x + yz * y + zz * z])
 
 
 def unsymmetric(left: Array, right: Array, factor: Array, diagonal: Array) -> Array:

@@ -16,6 +16,7 @@ from tautbar.model.parts import Pulse
 
 Array = NDArray[np.float64]
 Curve = Callable[[Array], Array]
+CURVE_STEPS = 10  # in a curved pulse at least: its impulse is then held to 1 %; common practice, no source
 _GAUSS_X, _GAUSS_W = np.polynomial.legendre.leggauss(16)  # exact to rounding on every smooth piece below
 
 
@@ -29,6 +30,7 @@ class Shape:
     corners: Array
     curves: tuple[Curve, ...]
     afterwards: float = 0.0
+    curved: bool = False  # else each piece is a straight line
 
     def at(self, t: Array | float, inside: float) -> Array:
         """Factor at times ``t`` [s], by the piece that holds at the time ``inside``."""
@@ -57,7 +59,8 @@ def shape_of(pulse: Pulse) -> Shape:
         return _table(pulse)
     T = pulse.duration
     breaks, curves, afterwards = _PIECES[pulse.shape](pulse, T)
-    return Shape(pulse.start + np.array([0.0, *breaks, T]), tuple(curves), afterwards)
+    corners = pulse.start + np.array([0.0, *breaks, T])
+    return Shape(corners, tuple(curves), afterwards, pulse.shape in _CURVED)
 
 
 Pieces = tuple[list[float], list[Curve], float]
@@ -104,6 +107,9 @@ _PIECES: dict[str, Callable[[Pulse, float], Pieces]] = {
 }
 
 
+_CURVED = ("half-sine", "versed-sine", "blast")
+
+
 def _table(pulse: Pulse) -> Shape:
     times, factors = np.array(pulse.times), np.array(pulse.factors)
 
@@ -129,9 +135,19 @@ class EventForces:
         """Mean joint forces (3, J) [N] over a step that crosses no corner."""
         return self._weighted([s.mean(t0, t1) for s in self.shapes])
 
-    def corners(self) -> Array:
-        """All instants [s] on which steps land, rising."""
-        return np.unique(np.concatenate([s.corners for s in self.shapes] or [np.zeros(0)]))
+    def landings(self, time_step: float) -> Array:
+        """All instants [s] on which steps land, rising: corners, and within curves too short for the step.
+
+        A curved pulse is crossed in at least `CURVE_STEPS` steps: one that vanishes at both ends of a
+        single step would not be met at all.
+        """
+        found = [np.zeros(0)]
+        for shape in self.shapes:
+            found.append(shape.corners)
+            span = float(np.ptp(shape.corners))
+            if shape.curved and span < CURVE_STEPS * time_step:
+                found.append(np.linspace(shape.corners[0], shape.corners[-1], CURVE_STEPS + 1)[1:-1])
+        return np.unique(np.concatenate(found))
 
     def _weighted(self, factors: list[float]) -> Array:
         return (
