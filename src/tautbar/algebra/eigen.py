@@ -146,37 +146,58 @@ def _search(inverse: _Inverse, wanted: int) -> tuple[_Pairs, int, int, bool]:
         pairs = _extended(inverse, pairs, more)
         missing = wanted - len(pairs.value)
         if missing <= 0:
-            first, last = _equals(pencil, pairs.value, wanted - 1)
-            counted = pencil.count_below(pairs.value[last - 1] + _apart(pencil, pairs.value[last - 1]))
-            below = -1 if counted is None else counted
+            apart, first, last, below = _counted(inverse, pairs, wanted)
             if below <= last:
                 return pairs, wanted, below, below == last
-            if _none_missed_before(pencil, pairs.value, first, last):
+            if _none_missed_before(pencil, pairs.value, apart, first, last):
                 return pairs, wanted, below, True
             missing = min(below - last, wanted)
         more = missing + _SPARE
     return pairs, wanted, below, False
 
 
-def _apart(pencil: Pencil, value: float) -> float:
-    """Distance above an eigenvalue that is past its rounding."""
-    return max(SEPARATION * abs(value), pencil.zero_width)
+def _counted(inverse: _Inverse, pairs: _Pairs, wanted: int) -> tuple[FloatArray, int, int, int]:
+    """Distances past rounding, the equals of the last pair wanted, and the pivots counted above them (or -1).
+
+    Just above rounding in the mode's own shape; where pivots so near cannot be told from zero, farther.
+    """
+    narrow = _apart(inverse, pairs)
+    for apart in (narrow, np.maximum(narrow, inverse.pencil.zero_width)):
+        first, last = _equals(pairs.value, apart, wanted - 1)
+        counted = inverse.pencil.count_below(pairs.value[last - 1] + apart[last - 1])
+        if counted is not None:
+            return apart, first, last, counted
+    return apart, first, last, -1
 
 
-def _equals(pencil: Pencil, values: FloatArray, index: int) -> tuple[int, int]:
+def _rounding(pencil: Pencil, shape: FloatArray, shift: float) -> FloatArray:
+    """What rounding of K makes of an eigenvalue, in the mode's own shape (M,)."""
+    size = np.abs(shape)
+    modal_mass = np.sum(shape * (pencil.mass @ shape), axis=0)
+    own = np.sum(size * (pencil.magnitude @ size), axis=0) / np.where(modal_mass > 0, modal_mass, 1.0)
+    width: FloatArray = _ROUNDING * (own + shift)
+    return width
+
+
+def _apart(inverse: _Inverse, pairs: _Pairs) -> FloatArray:
+    """Distance above each eigenvalue (M,) that is past its rounding."""
+    width = _rounding(inverse.pencil, pairs.shape, inverse.shift)
+    return np.maximum(SEPARATION * np.abs(pairs.value), width)
+
+
+def _equals(values: FloatArray, apart: FloatArray, index: int) -> tuple[int, int]:
     """First of the eigenvalues equal to this one but for rounding, and the first after them."""
-    gap = np.diff(values) > 2.0 * np.maximum(SEPARATION * np.abs(values[:-1]), pencil.zero_width)
+    gap = np.diff(values) > 2.0 * apart[:-1]
     ends = np.concatenate(([0], np.flatnonzero(gap) + 1, [len(values)]))
     at = int(np.searchsorted(ends, index, side="right"))
     return int(ends[at - 1]), int(ends[at])
 
 
-def _none_missed_before(pencil: Pencil, values: FloatArray, first: int, last: int) -> bool:
+def _none_missed_before(pencil: Pencil, values: FloatArray, apart: FloatArray, first: int, last: int) -> bool:
     """Whether all eigenvalues before a multiple one are known, so that only some of its equals are not."""
-    width = _apart(pencil, values[first])
-    if values[last - 1] - values[first] > 2.0 * width:
+    if values[last - 1] - values[first] > 2.0 * apart[first]:
         return False
-    return pencil.count_below(values[first] - width) == first
+    return pencil.count_below(values[first] - apart[first]) == first
 
 
 def _extended(inverse: _Inverse, known: _Pairs, more: int) -> _Pairs:
@@ -226,14 +247,12 @@ def _all_pairs(inverse: _Inverse) -> _Pairs:
     shape[some], shape[none] = part, follow @ part
     beyond = value + inverse.shift
     low = int(np.count_nonzero(beyond**2 <= beyond[-1] * beyond[0]))
-    low = _equals(pencil, value, max(low, 1) - 1)[1]
+    low = _equals(value, _apart(inverse, _Pairs(value, shape)), max(low, 1) - 1)[1]
     sharp = inverse.ritz(shape[:, :low])
     return _Pairs(np.concatenate((sharp.value, value[low:])), np.column_stack((sharp.shape, shape[:, low:])))
 
 
-def _judged(
-    pencil: Pencil, pairs: _Pairs, wanted: int, below: int, complete: bool, shift: float
-) -> Modes:
+def _judged(pencil: Pencil, pairs: _Pairs, wanted: int, below: int, complete: bool, shift: float) -> Modes:
     """The wanted pairs, normalised, with their residuals and counts."""
     value, shape = pairs.value[:wanted], _normalised(pencil, pairs.shape[:, :wanted])
     force = pencil.stiffness @ shape
@@ -241,7 +260,7 @@ def _judged(
     largest = np.linalg.norm(pencil.magnitude @ np.abs(shape), axis=0)
     moved = np.linalg.norm(force, axis=0)
     heaviest = pencil.greatest * np.linalg.norm(pencil.mass @ shape, axis=0)
-    width = _ROUNDING * (np.sum(np.abs(shape) * (pencil.magnitude @ np.abs(shape)), axis=0) + shift)
+    width = _rounding(pencil, shape, shift)
     scale = np.where(np.abs(value) <= width, heaviest, moved)
     gram = shape.T @ (pencil.mass @ shape)
     negative, zero = _signs(pencil, value, width, complete)
