@@ -42,7 +42,7 @@ class EnergyConserving:
         pushed = motion.system.freedom.gather(motion.events.mean(now.t, t))
         trial = _Trial(motion, now, dt, motion.dead + pushed, self.capture)
         guess = dt * now.v + 0.5 * dt * dt * now.pace
-        dq, iterations = solve_step(trial, guess, self.kept, (dt, trial.on.tobytes()))
+        dq, iterations = solve_step(trial, guess, self.kept, self.kept.key_of(dt, trial.on))
         return self._finish(motion, trial, dq, t, pushed, iterations)
 
     def _finish(
@@ -101,9 +101,12 @@ class _Trial:
 
     def _rounding(self) -> float:
         """What rounding leaves of the residual [N]; all there is where everything is slack."""
-        EA = self.motion.springs.k * self.motion.springs.L0
+        sp, on = self.motion.springs, self.on
+        # Elongations come from displacements: no worse than eps of those, or of the members' length.
+        move = float(np.abs(self.now.q).max(initial=0.0)) + np.abs(self.before.e[on])
+        stretch = (sp.k[on] * np.minimum(move, sp.L0[on])).max(initial=0.0)
         inertia = float(np.abs(self.inertia0).max(initial=0.0)) / self.dt
-        return 8 * float(np.finfo(float).eps) * (inertia + float(EA[self.on].max(initial=0.0)))
+        return 8 * float(np.finfo(float).eps) * (inertia + float(stretch))
 
     def mean_axial(self) -> Array:
         """Mean axial force of the step (N,) [N]."""

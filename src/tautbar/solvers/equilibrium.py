@@ -28,6 +28,7 @@ class Descent:
     converged: bool
     factorisations: int
     road: str = "Newton"
+    gave_way: bool = False  # the tangent lost its definiteness somewhere on the way
 
     @property
     def q(self) -> Array:
@@ -35,14 +36,15 @@ class Descent:
 
     def after(self, earlier: int, road: str | None = None) -> Descent:
         """The same with the work of earlier attempts counted."""
-        return Descent(self.look, self.converged, self.factorisations + earlier, road or self.road)
+        work = self.factorisations + earlier
+        return Descent(self.look, self.converged, work, road or self.road, self.gave_way)
 
 
 def find_equilibrium(potential: Potential, q: Array, tolerance: float) -> Descent:
     """Equilibrium reached from ``q`` (n,) [m]; the caller judges its stability."""
     if potential.small:
         return descend(potential, q, tolerance, cap=np.inf, limit=100)
-    if not potential.springs.two_way.any() and (potential.springs.sigma > 0).all():
+    if potential.convex:
         return _of_ties(potential, q, tolerance)
     plain = descend(potential, q, tolerance, cap=0.02, limit=60)
     return plain if plain.converged else _creep(potential, q, tolerance).after(plain.factorisations)
@@ -80,7 +82,7 @@ def _creep(potential: Potential, q: Array, tolerance: float) -> Descent:
             done = descend(potential, look.q, tolerance, cap=0.02, limit=30)
             work += done.factorisations
             if done.converged:
-                return Descent(done.look, True, work, "creep, then Newton")
+                return Descent(done.look, True, work, "creep, then Newton", True)
     return Descent(look, False, work, "creep")
 
 
@@ -95,19 +97,20 @@ def descend(potential: Potential, q: Array, tolerance: float, cap: float, limit:
         Most iterations.
     """
     look = potential.look(q)
-    work = 0
-    for _ in range(limit):
+    work, gave_way = 0, False
+    for iteration in range(limit):
         if potential.balanced(look, tolerance):
-            return Descent(look, True, work)
+            return Descent(look, True, work, gave_way=gave_way)
         factor, tries = _factor(potential, look)
         work += tries
+        gave_way |= iteration > 0 and tries > 1
         step = factor.solve(look.residual)
         far = potential.system.greatest_joint_move(step) / (cap * potential.system.structure.size)
         moved = _line_search(potential, look, step if far <= 1.0 else step / far)
         if moved is None:
             break
         look = moved
-    return Descent(look, potential.balanced(look, tolerance), work)
+    return Descent(look, potential.balanced(look, tolerance), work, gave_way=gave_way)
 
 
 def _factor(potential: Potential, look: Look) -> tuple[Factor, int]:

@@ -44,7 +44,7 @@ def march(motion: Motion, stepper: Stepper, first: Step, times: Array) -> Iterat
         A step failed even at 1/256 of its length; all steps before it were yielded.
     """
     yield Marched(first, 0, 0)
-    corners = motion.events.corners()
+    corners = motion.events.landings(float(times[1] - times[0]))
     latest, pace = first, _Pace()
     for number in range(1, times.size):
         for end in _landings(times[number - 1], times[number], corners):

@@ -125,17 +125,22 @@ class Motion:
 
     def internal(self, q: Array, st: Stretch, axial: Array) -> Array:
         """Force of members and springs on the free unknowns (n,) [N]."""
-        return np.asarray(self.system.pull(axial, st.n) + self.system.spring @ q)
+        return self.system.freedom.pull(axial * st.n) + self.system.spring @ q
 
     def carrying(self, st: Stretch) -> Flags:
-        return np.asarray(self.springs.two_way | (self.springs.sigma * st.e > 0))
+        """The *state* taut (N,): a tie exactly at its length is, whatever rounding says."""
+        return members.taut(self.springs, st.e)
 
     def drag(self, v: Array, on: Flags) -> Array:
         """Rayleigh damping force C v (n,) [N], members not ``on`` left out."""
         force = self.rayleigh.mass_part * (self.M @ v)
         if self.rayleigh.stiffness_part:
-            ends = _block_times(self.damper_blocks * on, self.system.apart(v))
-            force = force + self.system.freedom.pull(ends)
+            ends = members.block_times(self.damper_blocks * on, self.system.apart(v))
+            force = (
+                force
+                + self.system.freedom.pull(ends)
+                + self.rayleigh.stiffness_part * (self.system.spring @ v)
+            )
         return np.asarray(force)
 
     def C_lower(self, on: Flags) -> Array:
@@ -143,6 +148,7 @@ class Motion:
         lower = self.rayleigh.mass_part * self.M_lower
         if self.rayleigh.stiffness_part:
             lower = lower + self.system.member_lower(self.damper_blocks * on)
+            lower = lower + self.rayleigh.stiffness_part * self.system.spring_lower
         return lower
 
     def event_force(self, t: float, inside: float) -> Array:
@@ -152,7 +158,7 @@ class Motion:
         """The state at t = 0 as a step that took no time, in balance with what acts just after it."""
         st = self.stretch(q)
         axial, _ = self.axial(st, v)
-        corners = self.events.corners()
+        corners = self.events.landings(first_step)
         inside = 0.5 * float(np.append(corners[corners > 1e-9 * first_step], first_step).min())
         load = self.dead + self.event_force(0.0, inside)
         a = self.over_mass(load - self.internal(q, st, axial) - self.drag(v, self.carrying(st)))
@@ -161,13 +167,14 @@ class Motion:
     def joint_forces(self, step: Step, V: Array, A: Array) -> Array:
         """What every joint (3, J) needs [N]: member pull, inertia and damping, springs left out."""
         system, st = self.system, step.stretch
-        needed = system.joint_pull(step.axial, st.n) + (self.joint_mass @ A.T).T
+        needed = system.freedom.joint_pull(step.axial * st.n) + (self.joint_mass @ A.T).T
         if self.rayleigh.mass_part:
             needed = needed + self.rayleigh.mass_part * (self.joint_mass @ V.T).T
         if self.rayleigh.stiffness_part:
             blocks = self.damper_blocks * self.carrying(st)
-            ends = _block_times(blocks, system.apart(step.state.v))
+            ends = members.block_times(blocks, system.apart(step.state.v))
             needed = needed + system.freedom.joint_pull(ends)
+            needed = needed + self.rayleigh.stiffness_part * system.freedom.grounded(V)
         return np.asarray(needed)
 
     def kinetic(self, v: Array) -> float:
@@ -175,13 +182,6 @@ class Motion:
 
     def strain(self, q: Array, st: Stretch) -> float:
         return members.energy(self.springs, st.e) + 0.5 * float(q @ (self.system.spring @ q))
-
-
-def _block_times(blocks: Array, v: Array) -> Array:
-    """Symmetric blocks xx, yy, zz, xy, xz, yz (6, N) times vectors (3, N)."""
-    xx, yy, zz, xy, xz, yz = blocks
-    x, y, z = v
-    return np.stack([xx * x + xy * y + xz * z, xy * x + yy * y + yz * z, xz * x + yz * y + zz * z])
 
 
 def damper_blocks(springs: Springs, st: Stretch, axial: Array, stiffness_part: float, small: bool) -> Array:

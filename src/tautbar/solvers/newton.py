@@ -42,6 +42,11 @@ class KeptFactor:
         """The factor, if it was made for this ``key``."""
         return self.factor if self.key == key else None
 
+    @staticmethod
+    def key_of(dt: float, on: NDArray[np.bool_]) -> tuple[str, bytes]:
+        """Step length, to the digits that rounding of times leaves it, and the taut set."""
+        return f"{dt:.9e}", on.tobytes()
+
     def put(self, factor: Factor, key: object) -> Factor:
         self.factor, self.key = factor, key
         return factor

@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from tautbar.algebra.eigen import lowest_modes
 from tautbar.algebra.null import null_vectors
+from tautbar.algebra.solver import NotPositiveDefinite
 from tautbar.mechanics import members
 from tautbar.solvers.equilibrium import Descent, descend
 from tautbar.solvers.potential import Look, Potential
@@ -51,12 +52,21 @@ def count_pivots(potential: Potential, look: Look) -> Pivots:
     """Pivots of the tangent, ties exactly at their length taken as taut; then without those ties."""
     sp, e = potential.springs, look.stretch.e
     on, firm = members.taut(sp, e), members.firmly_taut(sp, e)
-    all_taut = potential.system.solver.symmetric(potential.curvature(look, on))
+    negative, zero = _signs(potential, potential.curvature(look, on))
     if (on == firm).all():
-        return Pivots(all_taut.negative, all_taut.zero, False)
-    without = potential.system.solver.symmetric(potential.curvature(look, firm))
-    weaker = without.negative + without.zero > all_taut.negative + all_taut.zero
-    return Pivots(all_taut.negative, all_taut.zero, weaker)
+        return Pivots(negative, zero, False)
+    without = sum(_signs(potential, potential.curvature(look, firm)))
+    return Pivots(negative, zero, without > negative + zero)
+
+
+def _signs(potential: Potential, K: Array) -> tuple[int, int]:
+    """Negative and zero pivots; a Cholesky factor that exists is the quicker proof that there are none."""
+    try:
+        potential.system.solver.cholesky(K)
+    except NotPositiveDefinite:
+        factor = potential.system.solver.symmetric(K)
+        return factor.negative, factor.zero
+    return 0, 0
 
 
 def leave_saddle(potential: Potential, look: Look, tolerance: float) -> list[Neighbour]:
@@ -80,23 +90,43 @@ def leave_saddle(potential: Potential, look: Look, tolerance: float) -> list[Nei
     return sorted(found, key=lambda n: n.move)
 
 
+def falls_away(potential: Potential, look: Look) -> bool:
+    """Does the energy fall along the lowest mode, to either side?"""
+    return any(_down_the_mode(potential, look, sense) is not None for sense in (1.0, -1.0))
+
+
 def _fall(potential: Potential, look: Look, sense: float, tolerance: float) -> Descent | None:
     """Go along the lowest mode while the energy falls, then descend from the lowest point."""
-    firm = members.firmly_taut(potential.springs, look.stretch.e)
-    z = softest(potential, potential.curvature(look, firm))
-    z = sense * z / potential.system.greatest_joint_move(z)
-    size = potential.system.structure.size
-    best, reach = look, 1e-6 * size  # a rod may catch after a tenth of a millimetre
-    while reach < 2 * size:
-        tried = potential.look(look.q + reach * z)
-        if tried.energy >= best.energy:
-            break
-        best, reach = tried, 2 * reach
-    if best is look:
+    best = _down_the_mode(potential, look, sense)
+    if best is None:
         return None
     # Short steps: the answer wanted is the nearest valley, not the deepest.
     down = descend(potential, best.q, tolerance, cap=0.02, limit=300)
     return down if down.look.energy < look.energy else None
+
+
+def _down_the_mode(potential: Potential, look: Look, sense: float) -> Look | None:
+    """The lowest point along the lowest mode before the energy rises; None where it rises at once."""
+    firm = members.firmly_taut(potential.springs, look.stretch.e)
+    z = softest(potential, potential.curvature(look, firm))
+    z = sense * z / potential.system.greatest_joint_move(z)
+    size = potential.system.structure.size
+    enough = look.energy - 1e-13 * max(abs(look.energy), look.strain_energy)  # a fall beyond rounding
+    # A rod may catch after a tenth of a millimetre, or of a micron where it is cut to its place.
+    reach = 1e-6 * size
+    best = potential.look(look.q + reach * z)
+    while best.energy >= enough and reach > 1e-9 * size:
+        reach *= 0.1
+        best = potential.look(look.q + reach * z)
+    if best.energy >= enough:
+        return None
+    while reach < 2 * size:
+        reach *= 2
+        tried = potential.look(look.q + reach * z)
+        if tried.energy >= best.energy:
+            break
+        best = tried
+    return best
 
 
 def softest(potential: Potential, K: Array) -> Array:

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from copy import copy
+from dataclasses import replace
 from functools import cached_property
 
 import numpy as np
@@ -11,12 +13,12 @@ from scipy.sparse import coo_array, csr_array, identity, kron
 from tautbar.algebra.pattern import SymmetricPattern
 from tautbar.algebra.scatter import ScatterPlan
 from tautbar.algebra.solver import Solver, choose_solver
-from tautbar.mechanics import members
 from tautbar.mechanics.entries import GENERAL, SYMMETRIC, member_entries
-from tautbar.mechanics.freedom import Freedom, free_directions
+from tautbar.mechanics.freedom import Flags, Freedom, free_directions, pushers
+from tautbar.mechanics.loads import Acting
 from tautbar.mechanics.mass import joint_mass_matrix
 from tautbar.mechanics.product import Product
-from tautbar.mechanics.structure import Structure, build
+from tautbar.mechanics.structure import Stage, Structure, build
 from tautbar.model.parts import Parts
 
 Array = NDArray[np.float64]
@@ -52,10 +54,20 @@ class System:
         self.solver: Solver = choose_solver(self.pattern)
 
     @classmethod
-    def of(cls, parts: Parts) -> System:
-        """The system of a checked model."""
-        structure = build(parts)
-        return cls(structure, free_directions(parts, structure))
+    def of(cls, parts: Parts, stage: Stage | None = None, pushing: Flags | None = None) -> System:
+        """The system of a checked model at a stage; ``pushing`` are the one-way supports that hold."""
+        stage = Stage.first(parts) if stage is None else stage
+        structure = build(parts, stage)
+        if pushing is None:
+            pushing = pushers(parts, stage, structure.joints)
+        return cls(structure, free_directions(parts, structure, stage, pushing))
+
+    def with_lengths(self, L0: Array, EA: Array | None = None) -> System:
+        """The same with other unstressed lengths (N,) [m] (and EA [N]); pattern and plans are shared."""
+        other = copy(self)
+        s = self.structure
+        other.structure = replace(s, L0=L0, stretch0=s.stretch0 + (s.L0 - L0), EA=s.EA if EA is None else EA)
+        return other
 
     @property
     def n(self) -> int:
@@ -98,24 +110,13 @@ class System:
         """Share of held displacements (3, J) in `apart`."""
         return self.freedom.apart_of_joints(move)
 
-    def pull(self, axial: Array, n: Array) -> Array:
-        """Internal force (n,) [N] of member forces along unit vectors (3, N)."""
-        return self.freedom.pull(axial * n)
-
-    def joint_pull(self, axial: Array, n: Array) -> Array:
-        """The same at all joints, (3, J) [N]."""
-        return self.freedom.joint_pull(axial * n)
-
-    def joint_mass(self, added: Array, lumped: bool) -> csr_array:
-        """Mass between joints (J, J) [kg]; ``added`` (J,) are masses of load cases."""
-        return joint_mass_matrix(self.structure, added, lumped)
+    def joint_mass(self, acting: Acting, lumped: bool) -> csr_array:
+        """Mass between joints (J, J) [kg], masses and ice of the load cases included."""
+        return joint_mass_matrix(self.structure, acting.mass, acting.coat, lumped)
 
     def free_mass(self, joint_mass: csr_array) -> csr_array:
         """Mass matrix over the free unknowns (n, n) [kg]."""
         return self._free(joint_mass)
-
-    def springs(self, take_up: Array | None = None, heating: Array | None = None) -> members.Springs:
-        return members.springs(self.structure, take_up, heating)
 
     def greatest_joint_move(self, q: Array) -> float:
         """Largest displacement of any joint [m] in the free part ``q``."""
