@@ -96,7 +96,8 @@ class Progress:
             if share > SURE:
                 parts.append(f"{clock(gone * (1 / share - 1))} left")
         if self._unit:
-            parts.append(f"{n:.4g} {self._unit}")
+            at = "at " if self._unit == "s" else ""  # an instant, not to be taken for a time left
+            parts.append(f"{at}{n:.4g} {self._unit}")
         return "  ".join([*parts, note] if note else parts)
 
     def _redraw(self, text: str) -> None:

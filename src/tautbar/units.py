@@ -70,8 +70,10 @@ TEMPERATURE_CHANGE = _dimension("a temperature change", "-35 K", temperature=1)
 EXPANSION = _dimension("an expansion coefficient", "12e-6 / K", temperature=-1)
 FORCE = _dimension("a force", "12 kN", force=1)
 STRESS = _dimension("a stress or modulus", "210 GPa", force=1, length=-2)
+PRESSURE = _dimension("a pressure", "0.8 kPa", force=1, length=-2)
 STIFFNESS = _dimension("a stiffness", "40 N/mm", force=1, length=-1)
 LINE_LOAD = _dimension("a force per length", "0.2 kN/m", force=1, length=-1)
+FORCE_DENSITY = _dimension("a force density", "2 kN/m", force=1, length=-1)
 DENSITY = _dimension("a density", "7850 kg/m^3", mass=1, length=-3)
 LINE_MASS = _dimension("a mass per length", "1.1 kg/m", mass=1, length=-1)
 
@@ -241,9 +243,8 @@ class Units:
         if isinstance(value, str):
             result = _quoted(value, want)
         elif isinstance(value, bool) or not isinstance(value, int | float):
-            raise BadQuantity(
-                f'a number or a quoted quantity such as "{want.example}" is wanted, not {say(value)}'
-            )
+            quoted = "" if want is NUMBER else f' or a quoted quantity such as "{want.example}"'
+            raise BadQuantity(f"a number{quoted} is wanted, not {say(value)}")
         else:
             result = self.bare(_as_float(value), want)
         if not math.isfinite(result):
@@ -302,7 +303,7 @@ def _wrong_dimension(text: str, rest: str, dimension: Exponents, want: Dimension
         better = _FORCE_FOR_MASS.get(mass[0], "") if mass else ""
         if better:
             return f"{message} ({mass[0] if mass else ''} is a mass: write {better} for the force)"
-    return f'{message}, for example "{want.example}"'
+    return message if want is NUMBER else f'{message}, for example "{want.example}"'
 
 
 def say(value: object) -> str:

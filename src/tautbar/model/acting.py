@@ -2,21 +2,17 @@
 
 from __future__ import annotations
 
-import itertools
 import math
 from array import array
 from collections.abc import Mapping
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Any
 
-from tautbar.model.format import AXES
-from tautbar.model.lookup import Finder, is_pattern, matching
-from tautbar.model.mistakes import Mistakes, near
-from tautbar.model.parts import Hanging, Indices, LoadCase, Loading, Mass, Pulse, Support, Vector
+from tautbar.model.lookup import Finder, Wholes
+from tautbar.model.mistakes import Mistakes
+from tautbar.model.parts import AXES, Ice, Indices, LoadCase, Mass, Pulse, Support, Vector, Wind
 from tautbar.model.positions import Path
-
-_MOST_LOADINGS = 100_000
-_ZERO = (0.0, 0.0, 0.0)
 
 
 def notes_of(data: dict[str, Any]) -> dict[str, str]:
@@ -31,7 +27,7 @@ class Actions:
     mistakes: Mistakes
     joints: Finder
     members: Finder
-    hanging: tuple[Hanging, ...]
+    wholes: Wholes
     axes: tuple[int, ...]
     temperature: float | None = None
 
@@ -46,29 +42,61 @@ class Actions:
             if name in names:
                 self.mistakes.add((*path, "name"), f"the name '{name}' is used twice for supports")
             names.add(name)
-            if not {"fixed", "along", "springs"} & data.keys():
-                self.mistakes.add(path, "holds nothing", 'give fixed = ["x"], along or springs')
+            if not {"fixed", "along", "springs", "only_pushes"} & data.keys():
+                self.mistakes.add(path, "holds nothing", 'give fixed = ["x"], along, springs or only_pushes')
+            fixed = tuple(dict.fromkeys(AXES.index(a) for a in data.get("fixed") or () if a))
+            along = self._along(data, path)
+            springs = self._springs(data.get("springs") or {}, path)
             found.append(
                 Support(
                     name,
                     self.joints.find(data["joints"], (*path, "joints")),
-                    tuple(dict.fromkeys(AXES.index(a) for a in data.get("fixed") or () if a)),
-                    self._along(data, path),
-                    self._springs(data.get("springs") or {}, path),
+                    fixed,
+                    along,
+                    springs,
+                    self._only_pushes(data.get("only_pushes"), fixed, along, springs, path),
+                    data.get("absent", False) is not False,
                     **notes_of(data),
                 )
             )
         return tuple(found)
 
+    def _only_pushes(
+        self,
+        given: str | None,
+        fixed: Indices,
+        along: Vector | None,
+        springs: tuple[tuple[int, float], ...],
+        path: Path,
+    ) -> int | None:
+        """The axis a support pushes along, which it may not hold in another way too."""
+        if given is None:
+            return None
+        axis, where = AXES.index(given), (*path, "only_pushes")
+        held = {
+            "fixed": axis in fixed,
+            "along": along is not None and along[axis] != 0,
+            "springs": any(axis == a for a, _ in springs),
+        }
+        if axis not in self.axes:
+            self.mistakes.add(where, f"{given} is not a direction of this plane model")
+        for key in (key for key, holds in held.items() if holds):
+            what = f"'{key}' holds {given} both ways, only_pushes one way"
+            self.mistakes.add(where, what, f"leave {given} out of one of them")
+        return axis
+
     def _along(self, data: dict[str, Any], path: Path) -> Vector | None:
-        along = data.get("along")
-        if along is None:
+        return self._direction(data.get("along"), (*path, "along"))
+
+    def _direction(self, given: Vector | None, path: Path) -> Vector | None:
+        """The unit vector along a vector."""
+        if given is None:
             return None
-        size = math.hypot(*along)
+        size = math.hypot(*given)
         if size == 0:
-            self.mistakes.add((*path, "along"), "has no direction: all its components are zero")
+            self.mistakes.add(path, "has no direction: all its components are zero")
             return None
-        return (along[0] / size, along[1] / size, along[2] / size)
+        return (given[0] / size, given[1] / size, given[2] / size)
 
     def _springs(self, data: dict[str, Any], path: Path) -> tuple[tuple[int, float], ...]:
         for axis in data:
@@ -78,11 +106,15 @@ class Actions:
 
     def masses(self, entries: list[Any]) -> tuple[Mass, ...]:
         """Masses at joints and along members."""
-        found = []
+        found, names = [], set()
         for i, data in enumerate(entries):
             if data is None:
                 continue
             path: Path = ("masses", i)
+            name = data.get("name") or f"mass {i + 1}"
+            if name in names:
+                self.mistakes.add((*path, "name"), f"the name '{name}' is used twice for masses")
+            names.add(name)
             keys = {"joints", "mass", "members", "per_length"} & data.keys()
             if keys not in ({"joints", "mass"}, {"members", "per_length"}):
                 self.mistakes.add(path, "is not whole", "give joints and mass, or members and per_length")
@@ -92,6 +124,8 @@ class Actions:
                     self.members.find(data.get("members"), (*path, "members")),
                     data.get("mass", 0.0),
                     data.get("per_length", 0.0),
+                    name,
+                    data.get("absent", False) is not False,
                     **notes_of(data),
                 )
             )
@@ -114,6 +148,8 @@ class Actions:
             self._temperature(data, path),
             self._each(data, "movements", self.joints, "move", path),
             self._take_up(data, path),
+            self._wind(data, path),
+            self._ice(data, path),
             **notes_of(data),
         )
 
@@ -138,6 +174,8 @@ class Actions:
         if isinstance(change, list):
             return self._each(data, "temperature_change", self.members, "change", path)
         if absolute is not None:
+            if self.temperature is None and self.mistakes.at("temperature"):
+                return ()
             if self.temperature is None:
                 what = "the model does not say at which temperature its lengths are given"
                 self.mistakes.add((*path, "temperature"), what, 'add temperature = "10 degC" to the model')
@@ -147,21 +185,55 @@ class Actions:
         return () if change is None else ((everyone, change),)
 
     def _take_up(self, data: dict[str, Any], path: Path) -> tuple[tuple[Indices, float], ...]:
-        """Take-up; of a hanging member named as a whole each piece takes its share."""
+        """Take-up; of a rope named as a whole each of its members takes its share."""
         found: list[tuple[Indices, float]] = []
         for i, entry in enumerate(data.get("take_up") or ()):
             if entry is None:
                 continue
             length, names = entry.get("length") or 0.0, entry.get("members") or []
             left = dict.fromkeys(self.members.find(names, (*path, "take_up", i, "members")))
-            for h in self.hanging:
-                if any(_names_whole(name, h.name) for name in names):
-                    found.append((tuple(h.members), length / len(h.members)))
-                    for piece in h.members:
-                        left.pop(piece, None)
+            for whole in self.wholes.named(names):
+                if all(member in left for member in whole.members):
+                    found += [(members, length * share) for members, share in whole.shares]
+                    for member in whole.members:
+                        del left[member]
             if left:
                 found.append((tuple(left), length))
         return tuple(found)
+
+    def _wind(self, data: dict[str, Any], path: Path) -> tuple[Wind, ...]:
+        found = []
+        for i, entry in enumerate(data.get("wind") or ()):
+            if entry is None:
+                continue
+            where = (*path, "wind", i)
+            members = self.members.find(entry["members"], (*where, "members"))
+            toward = self._direction(entry["toward"], (*where, "toward"))
+            heights, pressures = self._pressure(entry["pressure"], (*where, "pressure"))
+            found.append(Wind(members, toward or (0.0, 0.0, 0.0), heights, pressures))
+        return tuple(found)
+
+    def _pressure(self, given: Any, path: Path) -> tuple[tuple[float, ...], tuple[float, ...]]:
+        """Heights and pressures; a single pressure is that of every height."""
+        if not isinstance(given, list):
+            return ((0.0,), (given,)) if given is not None else ((), ())
+        rows = [row for row in given if row is not None and None not in row]
+        for (low, _), (high, _) in pairwise(rows):
+            if not high > low:
+                self.mistakes.add(path, f"heights must rise, {high:g} m follows {low:g} m")
+                break
+        return tuple(row[0] for row in rows), tuple(row[1] for row in rows)
+
+    def _ice(self, data: dict[str, Any], path: Path) -> tuple[Ice, ...]:
+        return tuple(
+            Ice(
+                self.members.find(entry["members"], (*path, "ice", i, "members")),
+                entry["thickness"] or 0.0,
+                entry["density"] or 0.0,
+            )
+            for i, entry in enumerate(data.get("ice") or ())
+            if entry is not None
+        )
 
     def events(self, words: dict[str, Any], tables: Mapping[str, Any]) -> dict[str, Pulse]:
         """Events by name; ``tables`` are the (times, factors) of those with a CSV table."""
@@ -216,91 +288,6 @@ class Actions:
             self.mistakes.add((*path, "duration"), f"is shorter than rise and fall together ({ramps:g} s)")
 
 
-def _names_whole(name: str, hanging: str) -> bool:
-    return name == hanging or (is_pattern(name) and bool(matching(name, [hanging])))
-
-
 def _columns(table: Any) -> tuple[array[float], array[float]]:
     rows = [row for row in table or () if isinstance(row, list) and None not in row]
     return array("d", [row[0] for row in rows]), array("d", [row[1] for row in rows])
-
-
-def build_loadings(
-    cases: Mapping[str, Any], combinations: dict[str, Any], mistakes: Mistakes
-) -> dict[str, tuple[Loading, ...]]:
-    """Loadings by the name of a load case, a combination (one) or a family (many)."""
-    found: dict[str, tuple[Loading, ...]] = {name: (Loading(name, {name: 1.0}),) for name in cases}
-    for name, data in combinations.items():
-        path: Path = ("combinations", name)
-        if name in cases:
-            mistakes.add(path, f"'{name}' is the name of a load case too")
-        if data is None:
-            found.setdefault(name, ())
-        elif isinstance(data.get("in_turn"), list) or isinstance(data.get("always"), dict):
-            found[name] = _family(name, data, cases, mistakes)
-        else:
-            found[name] = (Loading(name, check_factors(data, cases, path, mistakes)),)
-    return found
-
-
-def check_factors(
-    data: dict[str, Any] | None, cases: Mapping[str, Any], path: Path, mistakes: Mistakes
-) -> dict[str, float]:
-    """Factors of load cases that are known; patterns are refused (they would sum)."""
-    good = {}
-    for name, factor in (data or {}).items():
-        if is_pattern(name):
-            what = f"a pattern ('{name}') is not allowed here: all that match it would act together"
-            mistakes.add((*path, name), what, "name the load cases, or use a family with in_turn")
-        elif name not in cases:
-            mistakes.add((*path, name), f"there is no load case '{name}'", near(name, cases))
-        elif factor is not None:
-            good[name] = factor
-    return good
-
-
-def _family(
-    name: str, data: dict[str, Any], cases: Mapping[str, Any], mistakes: Mistakes
-) -> tuple[Loading, ...]:
-    path: Path = ("combinations", name)
-    always = check_factors(data.get("always"), cases, (*path, "always"), mistakes)
-    tables = [
-        _choices(table, cases, (*path, "in_turn", i), mistakes)
-        for i, table in enumerate(data.get("in_turn") or ())
-    ]
-    _refuse_twice(always, tables, path, mistakes)
-    if math.prod(map(len, tables)) > _MOST_LOADINGS:
-        mistakes.add(path, f"gives more than {_MOST_LOADINGS} loadings")
-        return ()
-    loadings = []
-    for choice in itertools.product(*tables):
-        words = ", ".join(f"{case} {factor:g}" for case, factor in choice)
-        loadings.append(Loading(f"{name}: {words}", {**always, **dict(choice)}))
-    return tuple(loadings)
-
-
-def _choices(
-    table: dict[str, Any] | None, cases: Mapping[str, Any], path: Path, mistakes: Mistakes
-) -> list[tuple[str, float]]:
-    found: list[tuple[str, float]] = []
-    for name, given in (table or {}).items():
-        factors = given if isinstance(given, list) else [given]
-        named = matching(name, cases) if is_pattern(name) else [name] if name in cases else []
-        if not named:
-            pattern = f"the pattern '{name}' matches no load case"
-            what = pattern if is_pattern(name) else f"there is no load case '{name}'"
-            mistakes.add((*path, name), what, near(name, cases))
-        found += [(case, f) for case in named for f in factors if f is not None and (case, f) not in found]
-    return found
-
-
-def _refuse_twice(
-    always: Mapping[str, float], tables: list[list[tuple[str, float]]], path: Path, mistakes: Mistakes
-) -> None:
-    seen = dict.fromkeys(always, "always")
-    for i, table in enumerate(tables):
-        for case in dict.fromkeys(case for case, _ in table):
-            if case in seen:
-                what = f"load case '{case}' is in {seen[case]} too: a loading takes it once"
-                mistakes.add((*path, "in_turn", i), what)
-            seen[case] = f"table {i + 1} of in_turn"

@@ -6,8 +6,23 @@ from array import array
 from collections import Counter, defaultdict
 from collections.abc import Iterator, Mapping
 
-from tautbar.model.parts import KINDS, Analysis, History, Loading, Modes, Parts
-from tautbar.model.plausible import implausible, several
+from tautbar.model.loadings import joined
+from tautbar.model.mistakes import several
+from tautbar.model.parts import (
+    AXES,
+    KINDS,
+    Analysis,
+    Buckling,
+    EquilibriumPath,
+    FormFinding,
+    History,
+    Loading,
+    Modes,
+    Parts,
+)
+from tautbar.model.plausible import implausible
+from tautbar.model.presence import presences
+from tautbar.model.proportion import total_mass
 from tautbar.model.soundness import has_mass
 
 _STRAIGHT = 1e-3  # rad: two bars that turn by less are drawn as one line
@@ -19,6 +34,9 @@ def warnings_of(parts: Parts, lengths: array[float]) -> tuple[str, ...]:
     return (
         *_hinges(parts),
         *_doubled(parts),
+        *_held_both_ways(parts),
+        *_never_there(parts),
+        *_loads_on_nothing(parts),
         *_weightless(parts),
         *_forces_without_mass(parts, lengths),
         *_unused(parts),
@@ -70,11 +88,13 @@ def _in_line(parts: Parts, joint: int, first: int, second: int) -> bool:
 
 
 def _doubled(parts: Parts) -> Iterator[str]:
-    """Members given twice between the same joints."""
+    """Members given twice between the same joints, unless one comes only later."""
     seen: dict[tuple[int, int], int] = {}
     m = parts.members
-    pairs = []
+    pairs, absent = [], set(m.absent)
     for i, (start, end) in enumerate(zip(m.start, m.end, strict=True)):
+        if i in absent:
+            continue
         other = seen.setdefault((start, end) if start < end else (end, start), i)
         if other != i:
             pairs.append(f"{m.names[other]}' and '{m.names[i]}")
@@ -82,11 +102,56 @@ def _doubled(parts: Parts) -> Iterator[str]:
         yield f"members {several(pairs)} join the same two joints: is one of each pair too many?"
 
 
+def _held_both_ways(parts: Parts) -> Iterator[str]:
+    """A support that only pushes, at a joint that another one holds along that axis."""
+    there = [s for s in parts.supports if not s.absent]
+    for pushing in there:
+        for other in there:
+            both = [parts.joints.names[j] for j in pushing.joints if j in other.joints]
+            if pushing.only_pushes is not None and pushing.only_pushes in other.fixed and both:
+                yield (
+                    f"joints {several(both)}: support '{other.name}' holds {AXES[pushing.only_pushes]} both "
+                    f"ways, so '{pushing.name}' never lets go"
+                )
+
+
+def _never_there(parts: Parts) -> Iterator[str]:
+    """What is declared absent, and never put in."""
+    changes = [analysis.change for analysis in parts.analyses]
+    put_in = {i for change in changes for i in change.with_members}
+    names = [parts.members.names[i] for i in parts.members.absent if i not in put_in]
+    supports = {name for change in changes for name in change.with_supports}
+    names += [s.name for s in parts.supports if s.absent and s.name not in supports]
+    masses = {name for change in changes for name in change.with_masses}
+    names += [m.name for m in parts.masses if m.absent and m.name not in masses]
+    if names and changes:
+        yield f"{several(names)}: declared absent, and no analysis puts them in"
+
+
+def _loads_on_nothing(parts: Parts) -> Iterator[str]:
+    """Forces and masses at joints whose members are not there: the ground takes them."""
+    m, presence = parts.members, presences(parts)
+    for analysis in parts.analyses:
+        absent = presence[analysis.name].members
+        if not absent:
+            continue
+        there = {j for i in range(len(m)) if i not in absent for j in (m.start[i], m.end[i])}
+        for case in dict.fromkeys(c for loading in _named_in(analysis) for c in loading.factors):
+            loads = parts.load_cases[case]
+            at = [j for joints, _ in (*loads.forces, *loads.masses) for j in joints if j not in there]
+            names = [parts.joints.names[j] for j in dict.fromkeys(at)]
+            if names:
+                what = f"analysis '{analysis.name}': load case '{case}' acts on joints {several(names)}"
+                yield f"{what}, which no member goes to there: those loads are lost"
+
+
 def _weightless(parts: Parts) -> Iterator[str]:
     """Loadings without self-weight, where there is weight."""
     if not has_mass(parts) or not parts.gravity:
         return
     for analysis in parts.analyses:
+        if isinstance(analysis, FormFinding):  # nets are often shaped without their weight
+            continue
         lacking = [
             loading.name
             for loading in _loads_of(analysis) or ()
@@ -98,7 +163,19 @@ def _weightless(parts: Parts) -> Iterator[str]:
 
 
 def _loads_of(analysis: Analysis) -> tuple[Loading, ...] | None:
-    return None if isinstance(analysis, Modes) else analysis.loads
+    """What acts together in an analysis; None where it is what its start state carries."""
+    if isinstance(analysis, Modes):
+        return None
+    if isinstance(analysis, EquilibriumPath | Buckling):
+        return (joined(analysis.loads.name, analysis.constant, analysis.loads),)
+    return (analysis.loads,) if isinstance(analysis, FormFinding) else analysis.loads
+
+
+def _named_in(analysis: Analysis) -> tuple[Loading, ...]:
+    """The loadings that an analysis names, each by itself."""
+    if isinstance(analysis, EquilibriumPath | Buckling):
+        return (analysis.loads,) if analysis.constant is None else (analysis.loads, analysis.constant)
+    return _loads_of(analysis) or ()
 
 
 def _forces_without_mass(parts: Parts, lengths: array[float]) -> Iterator[str]:
@@ -108,7 +185,7 @@ def _forces_without_mass(parts: Parts, lengths: array[float]) -> Iterator[str]:
         if not isinstance(analysis, Modes | History):
             continue
         for loading in acting_loads(analysis, by_name):
-            weight = _mass(parts, lengths) * parts.gravity
+            weight = total_mass(parts, lengths) * parts.gravity
             down = _force_down(parts, lengths, loading)
             if weight and down > _FORCE_SHARE * weight:
                 yield (
@@ -127,18 +204,8 @@ def acting_loads(analysis: Analysis, by_name: Mapping[str, Analysis]) -> tuple[L
     if start is None or start.as_drawn:
         return ()
     inherited = acting_loads(by_name[start.analysis], by_name)
-    return tuple(loading for loading in inherited if start.loads in (None, loading.name))
-
-
-def _mass(parts: Parts, lengths: array[float]) -> float:
-    """Mass of everything, kg; members by their drawn length."""
-    m = parts.members
-    per_length = [section.mass_per_length or 0.0 for section in parts.sections]
-    total = sum(per_length[section] * length for section, length in zip(m.section, lengths, strict=True))
-    for mass in parts.masses:
-        along = sum(lengths[i] for i in mass.members)
-        total += mass.mass * len(mass.joints) + mass.per_length * along
-    return total + sum(v * len(joints) for case in parts.load_cases.values() for joints, v in case.masses)
+    chosen = (start.loads or "").split(", without ")[0]
+    return tuple(loading for loading in inherited if chosen in ("", loading.name))
 
 
 def _force_down(parts: Parts, lengths: array[float], loading: Loading) -> float:
@@ -164,7 +231,7 @@ def _unused(parts: Parts) -> Iterator[str]:
     """Load cases and combinations that no analysis uses; a model without analyses may wait."""
     if not parts.analyses:
         return
-    loadings = [loading for a in parts.analyses for loading in _loads_of(a) or ()]
+    loadings = [loading for a in parts.analyses for loading in _named_in(a)]
     names = {loading.name for loading in loadings}
     cases = {case for loading in loadings for case in loading.factors}
     for name, several_of in parts.loadings.items():

@@ -8,8 +8,8 @@ from dataclasses import dataclass
 from typing import Any
 
 from tautbar.model import spec as s
-from tautbar.model.format import AXES
-from tautbar.model.mistakes import Mistakes, near
+from tautbar.model.mistakes import Mistakes, near, nearest
+from tautbar.model.parts import AXES
 from tautbar.model.positions import Path
 from tautbar.units import NUMBER, BadQuantity, Units, say
 
@@ -58,10 +58,15 @@ def _text(c: Checker, spec: s.Text, data: Any, path: Path) -> Any:
     if data in spec.later:
         return c.wrong(path, f"'{data}' {_NOT_YET}", _choices(spec))
     if spec.choices and data not in spec.choices:
-        return c.wrong(path, f"'{data}' is not one of the words known here", near(data, spec.choices))
+        return c.wrong(path, f"'{data}' is not one of the words known here", meant(spec, data))
     if spec.is_name:
         check_name(c.mistakes, data, path)
     return data
+
+
+def meant(spec: s.Text, word: str) -> str:
+    """What to write for a word that is none of the choices."""
+    return spec.meant.get(word.lower()) or near(word, spec.choices)
 
 
 def _choices(spec: s.Text) -> str:
@@ -152,11 +157,22 @@ def _names(c: Checker, spec: s.Names, data: Any, path: Path) -> Any:
 
 def _listed(c: Checker, spec: s.Listed, data: Any, path: Path) -> Any:
     if not isinstance(data, list):
-        return c.wrong(path, f"a list is wanted, not {say(data)}")
+        return c.wrong(path, f"a list is wanted, not {say(data)}", _as_list(spec, data))
     if len(data) < spec.at_least or (spec.at_most is not None and len(data) > spec.at_most):
         most = f" to {spec.at_most}" if spec.at_most is not None else " or more"
         return c.wrong(path, f"{spec.at_least}{most} values are wanted, {len(data)} given")
     return [c.check(spec.of, item, (*path, i)) for i, item in enumerate(data)]
+
+
+def _as_list(spec: s.Listed, data: Any) -> str:
+    """How to write a single thing as the list that is wanted."""
+    if isinstance(data, dict) and isinstance(spec.of, s.Table | s.Factors):
+        return "put it in square brackets, [ { .. } ]"
+    if not isinstance(data, str) or not isinstance(spec.of, s.Text | s.Quantity):
+        return ""
+    choices = spec.of.choices if isinstance(spec.of, s.Text) else ()
+    words = list(data) if set(data) <= set(choices) else [data]  # "xyz" for three axes
+    return "write [" + ", ".join(f'"{word}"' for word in words) + "]"
 
 
 def _row(c: Checker, spec: s.Row, data: Any, path: Path) -> Any:
@@ -170,11 +186,13 @@ def _row(c: Checker, spec: s.Row, data: Any, path: Path) -> Any:
 def _table(c: Checker, spec: s.Table, data: Any, path: Path) -> Any:
     if not isinstance(data, dict):
         return c.wrong(path, f"a table is wanted, not {say(data)}")
-    _keys(c, spec, data, path)
+    misspelt = _keys(c, spec, data, path)
     out: dict[str, Any] = {}
     for key, of in spec.fields.items():
         if key in data:
             out[key] = c.check(of, data[key], (*path, key))
+        elif key in misspelt:
+            out[key] = None
         elif of.default is not None:
             out[key] = of.default
         elif of.required:
@@ -183,21 +201,24 @@ def _table(c: Checker, spec: s.Table, data: Any, path: Path) -> Any:
     return out
 
 
-def _keys(c: Checker, spec: s.Table, data: dict[str, Any], path: Path) -> None:
-    """Note unknown and missing keys; a misspelt key explains a missing one, so it is said once."""
+def _keys(c: Checker, spec: s.Table, data: dict[str, Any], path: Path) -> set[str]:
+    """Note unknown and missing keys; gives those that were misspelt, which are wrong, not missing."""
     missing = [k for k, of in spec.fields.items() if of.required and k not in data]
+    misspelt = set()
     for key in data:
         if key in spec.fields or key in NOTES:
             continue
         if key in spec.later:
             c.wrong((*path, key), f"'{key}' {_NOT_YET}")
             continue
-        hint = near(key, spec.fields)
-        for explained in [k for k in missing if f"'{k}'" in hint]:
-            missing.remove(explained)
+        other = spec.synonyms.get(key) or nearest(key, spec.fields)
+        misspelt.add(other)
+        hint = f"did you mean '{other}'?" if other else near(key, spec.fields)
         c.wrong((*path, key), f"there is no key '{key}' here", hint)
     for key in missing:
-        c.wrong(path, f"'{key}' is missing", spec.fields[key].doc)
+        if key not in misspelt:
+            c.wrong(path, f"'{key}' is missing", spec.fields[key].doc)
+    return misspelt
 
 
 def _named(c: Checker, spec: s.Named, data: Any, path: Path) -> Any:

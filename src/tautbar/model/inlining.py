@@ -6,7 +6,8 @@ from collections.abc import Iterator, Mapping
 from typing import Any
 
 from tautbar.model.checking import NOTES
-from tautbar.model.format import AXES, LENGTH_KEYS
+from tautbar.model.format_structure import LENGTH_KEYS
+from tautbar.model.parts import AXES
 from tautbar.model.source import Source, bare_name, rows_of, separator_of
 
 

@@ -5,6 +5,8 @@ from __future__ import annotations
 import re
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
+from functools import cached_property
+from itertools import islice
 
 from tautbar.model.mistakes import Mistakes, near
 from tautbar.model.parts import Indices
@@ -23,12 +25,42 @@ def matching(pattern: str, names: Iterable[str]) -> list[str]:
     return [name for name in names if fits(name)]
 
 
+@dataclass(frozen=True)
+class Whole:
+    """Members that are one piece: a rope in pieces, or one clamped at the joints of its chain.
+
+    ``shares`` are members and the share of the whole length that each of them has.
+    """
+
+    name: str
+    shares: tuple[tuple[Indices, float], ...]
+    in_pieces: bool = False
+
+    @cached_property
+    def members(self) -> Indices:
+        return tuple(member for members, _ in self.shares for member in members)
+
+
+@dataclass(frozen=True)
+class Wholes:
+    """All of them, the longest first."""
+
+    all: tuple[Whole, ...] = ()
+
+    def named(self, names: Iterable[str]) -> list[Whole]:
+        """Those that are named as a whole, by their names or by patterns."""
+        by_name = {whole.name: whole for whole in self.all}
+        found = {n for name in names for n in (matching(name, by_name) if is_pattern(name) else [name])}
+        return [whole for name, whole in by_name.items() if name in found]
+
+
 @dataclass
 class Finder:
     """Positions of joints or of members by name.
 
     ``groups`` are positions by the name of a group; names from position ``drawn`` on (joints
-    between the pieces of hanging members) are matched only by patterns that contain "@".
+    between the pieces of hanging members) are matched only by patterns that contain "@"; names that
+    begin with one of ``unsure`` may belong to an entry that is wrong, so that they are not called unknown.
     """
 
     what: str  # "joint" or "member"
@@ -36,6 +68,7 @@ class Finder:
     mistakes: Mistakes
     groups: Mapping[str, Indices] = field(default_factory=dict)
     drawn: int | None = None
+    unsure: tuple[str, ...] = ()
     _known: dict[str, Indices] = field(default_factory=dict)
 
     def find(self, names: Iterable[str] | None, path: Path) -> Indices:
@@ -47,19 +80,34 @@ class Finder:
 
     def one(self, name: str, path: Path) -> Indices:
         """Positions a single name, group or pattern stands for; a mistake if there are none."""
-        if name not in self._known:
-            self._known[name] = self._look(name)
-        if not self._known[name]:
+        found = self.look(name)
+        if not found and not self.may_be(name):
             if is_pattern(name):
                 self.mistakes.add(
-                    path, f"the pattern '{name}' matches no {self.what}", near(name, self._all())
+                    path, f"the pattern '{name}' matches no {self.what}", near(name, self.all())
                 )
             else:
-                self.mistakes.add(path, f"there is no {self.what} '{name}'", near(name, self._all()))
+                self.mistakes.add(path, f"there is no {self.what} '{name}'", near(name, self.all()))
+        return found
+
+    def may_be(self, name: str) -> bool:
+        """May an unknown name belong to an entry that is wrong?"""
+        return name.startswith(self.unsure)
+
+    def look(self, name: str) -> Indices:
+        """The same without a mistake."""
+        if name not in self._known:
+            self._known[name] = self._look(name)
         return self._known[name]
 
-    def _all(self) -> list[str]:
-        return [*self.groups, *self.index]
+    def all(self) -> list[str]:
+        """All names but those of joints between pieces, those of groups first."""
+        return [*self.groups, *islice(self.index, self.drawn)]
+
+    @cached_property
+    def names(self) -> tuple[str, ...]:
+        """Names by position."""
+        return tuple(self.index)
 
     def _look(self, name: str) -> Indices:
         if name in self.index:

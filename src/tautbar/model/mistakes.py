@@ -10,6 +10,7 @@ from tautbar.model.positions import Path
 from tautbar.model.source import Source
 
 _MANY = 3000  # names
+_SHOWN = 5
 
 
 class Mistakes:
@@ -37,14 +38,26 @@ class Mistakes:
 
 def near(word: object, known: Iterable[str]) -> str:
     """A hint: the nearest known name, or some of the known ones."""
-    names = list(known)
+    names = list(dict.fromkeys(known))
     if not names:
         return "there are none"
-    text = str(word)
+    close = nearest(word, names)
+    if close:
+        return f"did you mean '{close}'?"
+    return "known: " + ", ".join(names[:9]) + (", ..." if len(names) > 9 else "")
+
+
+def nearest(word: object, known: Iterable[str]) -> str:
+    """The known name that was probably meant; "" where none is near."""
+    names, text = list(known), str(word)
     folded = [n for n in names if n.lower() == text.lower()]
     if len(names) > _MANY:  # comparing with all of a large model would take seconds
         names = [n for n in names if abs(len(n) - len(text)) <= 1 and n[:1] == text[:1]][:_MANY]
     close = folded or difflib.get_close_matches(text, names, 1, 0.6)
-    if close:
-        return f"did you mean '{close[0]}'?"
-    return "known: " + ", ".join(names[:9]) + (", ..." if len(names) > 9 else "")
+    return close[0] if close else ""
+
+
+def several(names: list[str], shown: int = _SHOWN) -> str:
+    """Some names, and how many more there are."""
+    more = f" and {len(names) - shown} more" if len(names) > shown else ""
+    return ", ".join(f"'{name}'" for name in names[:shown]) + more

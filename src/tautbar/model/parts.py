@@ -11,7 +11,7 @@ from array import array
 from collections.abc import Mapping
 from dataclasses import dataclass, field, fields
 
-KINDS = ("bar", "tension-only", "compression-only")  # `Members.kind` is a position in this
+KINDS = ("bar", "tension-only", "compression-only", "hanging")  # `Members.kind` is a position in this
 AXES = ("x", "y", "z")
 Vector = tuple[float, float, float]
 Indices = tuple[int, ...]  # of joints or members, in the order of `Joints` and `Members`
@@ -92,8 +92,9 @@ class Hanging:
 class Members:
     """Columns over N members, pieces of hanging members included.
 
-    ``pretension``, ``unstressed_length`` and ``slack`` are NaN where not given (at most one is);
-    for pieces all are NaN: `Hanging` says what was given.
+    ``pretension``, ``unstressed_length``, ``slack`` and ``sag`` are NaN where not given (at most one
+    is); for pieces all are NaN: `Hanging` says what was given. A member of kind "hanging" is one exact
+    catenary. Chains clamped at their joints (``rope = true``) come with the share of each member.
     """
 
     names: tuple[str, ...]
@@ -104,9 +105,11 @@ class Members:
     pretension: array[float]  # N
     unstressed_length: array[float]  # m
     slack: array[float]  # m
+    sag: array[float]  # m, of catenaries
     index: Mapping[str, int] = field(repr=False)
     groups: Mapping[str, Indices] = field(repr=False, default_factory=dict)
     hanging: tuple[Hanging, ...] = ()
+    absent: Indices = ()  # not there until an analysis takes them in
 
     def __len__(self) -> int:
         return len(self.names)
@@ -133,6 +136,8 @@ class Support:
     fixed: tuple[int, ...] = ()
     along: Vector | None = None
     springs: tuple[tuple[int, float], ...] = ()  # (axis, N/m)
+    only_pushes: int | None = None  # axis: pushes the structure up along it, and cannot hold it down
+    absent: bool = False
     note: str = ""
     source: str = ""
 
@@ -145,8 +150,29 @@ class Mass:
     members: Indices = ()
     mass: float = 0.0
     per_length: float = 0.0
+    name: str = ""
+    absent: bool = False
     note: str = ""
     source: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Wind:
+    """Pressure [Pa] over height [m, along ``up``] on members: x width x sin^2, normal to the member."""
+
+    members: Indices
+    toward: Vector  # unit vector
+    heights: tuple[float, ...]  # m, rising; one height: the same pressure everywhere
+    pressures: tuple[float, ...]  # Pa
+
+
+@dataclass(frozen=True, slots=True)
+class Ice:
+    """A coat of ice on members: weight, mass, and wider for the wind by twice its thickness."""
+
+    members: Indices
+    thickness: float  # m
+    density: float  # kg/m3
 
 
 @dataclass(frozen=True, slots=True)
@@ -161,6 +187,8 @@ class LoadCase:
     temperature_change: tuple[tuple[Indices, float], ...] = ()  # (members, K)
     movements: tuple[tuple[Indices, Vector], ...] = ()  # (joints, m) of held directions
     take_up: tuple[tuple[Indices, float], ...] = ()  # (members, m)
+    wind: tuple[Wind, ...] = ()
+    ice: tuple[Ice, ...] = ()
     note: str = ""
     source: str = ""
 
@@ -198,11 +226,29 @@ class Pulse:
 
 @dataclass(frozen=True, slots=True)
 class StartFrom:
-    """The state an analysis starts from. ``loads`` names one loading of it, None its only one."""
+    """The state an analysis starts from.
+
+    ``loads`` names one loading of it, None is its only one; ``each``: every loading in turn. ``at``
+    names a critical point of a path ("limit point 1") or is "end".
+    """
 
     analysis: str
     loads: str | None = None
     as_drawn: bool = False  # modes of a prestressed model about the drawing, insisted upon
+    each: bool = False
+    at: str | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Change:
+    """What an analysis takes away and puts in, on top of what its start state has."""
+
+    without_members: Indices = ()
+    without_supports: tuple[str, ...] = ()
+    without_masses: tuple[str, ...] = ()
+    with_members: Indices = ()
+    with_supports: tuple[str, ...] = ()
+    with_masses: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -223,6 +269,9 @@ class Static:
     steps: int | None = None  # None: as many as it takes
     tolerance: float = 1e-9
     folding: bool = False  # may bars turn more than 30 degrees?
+    lose_in_turn: Indices = ()  # one loading a lost member
+    pieces: int | None = None  # hanging members as this many straight pieces
+    change: Change = field(default_factory=Change)
     note: str = ""
     source: str = ""
     kind = "static"
@@ -235,6 +284,8 @@ class Modes:
     count: int | None = 10
     up_to: float | None = None  # Hz, instead of count
     mass: str = "consistent"  # or "lumped"
+    pieces: int | None = None
+    change: Change = field(default_factory=Change)
     note: str = ""
     source: str = ""
     kind = "modes"
@@ -266,12 +317,107 @@ class History:
     mass: str | None = None  # None: lumped where members can go slack, else consistent
     store: Store = field(default_factory=Store)
     precision: str = "single"
+    pieces: int | None = None
+    change: Change = field(default_factory=Change)
     note: str = ""
     source: str = ""
     kind = "history"
 
 
-Analysis = Static | Modes | History
+@dataclass(frozen=True, slots=True)
+class StopAt:
+    """Where a path ends: exactly one of the four."""
+
+    load_factor: float | None = None
+    joint: int | None = None  # with axis and displacement
+    axis: int = 0
+    displacement: float = 0.0  # m, from the drawing
+    limit_points: int | None = None
+    steps: int | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class EquilibriumPath:
+    name: str
+    loads: Loading  # times the load factor
+    stop_at: StopAt
+    start: StartFrom | None = None
+    constant: Loading | None = None
+    step: float = 0.1  # first step of the load factor
+    change: Change = field(default_factory=Change)
+    note: str = ""
+    source: str = ""
+    kind = "equilibrium-path"
+
+
+@dataclass(frozen=True, slots=True)
+class Buckling:
+    name: str
+    loads: Loading  # times the load factor
+    start: StartFrom | None = None
+    constant: Loading | None = None
+    count: int = 5
+    change: Change = field(default_factory=Change)
+    note: str = ""
+    source: str = ""
+    kind = "buckling"
+
+
+@dataclass(frozen=True, slots=True)
+class TensionTarget:
+    members: Indices
+    tension: float  # N
+    at: str | None = None  # of hanging ones: "from end", "to end", "greatest" (the default)
+    loads: str | None = None  # the loading it holds under; None: the first
+
+
+@dataclass(frozen=True, slots=True)
+class PositionTarget:
+    joint: int
+    axis: int
+    position: float  # m
+    loads: str | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class CutList:
+    """How the lengths of adjusted members are to be marked."""
+
+    marking_tension: float = 0.0  # N
+    temperature: float | None = None  # K, of marking; None: the model's
+    end_allowance: float = 0.0  # m, added to the marked length at each end
+
+
+@dataclass(frozen=True, slots=True)
+class Tune:
+    name: str
+    loads: tuple[Loading, ...]
+    adjust: Indices
+    start: StartFrom | None = None
+    targets: tuple[TensionTarget | PositionTarget, ...] = ()
+    together: tuple[Indices, ...] = ()  # one relative change of length a list
+    keep_taut: Indices = ()
+    margin: float = 0.0  # N
+    cut_list: CutList | None = None
+    change: Change = field(default_factory=Change)
+    note: str = ""
+    source: str = ""
+    kind = "tune"
+
+
+@dataclass(frozen=True, slots=True)
+class FormFinding:
+    name: str
+    loads: Loading
+    force_densities: tuple[tuple[Indices, float], ...]  # (members, N/m)
+    start: StartFrom | None = None
+    change: Change = field(default_factory=Change)
+    note: str = ""
+    source: str = ""
+    kind = "form-finding"
+
+
+Analysis = Static | Modes | History | EquilibriumPath | Buckling | Tune | FormFinding
 
 
 @dataclass(frozen=True, slots=True)

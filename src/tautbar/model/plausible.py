@@ -1,7 +1,6 @@
 """Ranges that values of real structures lie in: outside them a unit has probably slipped.
 
-The ranges are ours and wide on purpose: modulus from soft rubber-like ropes to beyond diamond,
-density from foam to tungsten, and so on. A value outside is warned of, never refused.
+The ranges are ours and wide on purpose. A value outside is warned of, never refused.
 """
 
 from __future__ import annotations
@@ -12,15 +11,17 @@ from collections.abc import Iterator
 from typing import Any
 
 from tautbar.model.echo import quantity_text
-from tautbar.model.parts import KINDS, History, Parts
+from tautbar.model.mistakes import several
+from tautbar.model.parts import KINDS, FormFinding, History, Parts, TensionTarget, Tune
 from tautbar.model.prestress import prestressed
+from tautbar.model.proportion import EXPANSION, MODULUS, disproportionate
 
 _RANGES: dict[str, tuple[float, float, str]] = {  # SI, ends included; zero is never warned of
-    "modulus": (1e6, 1.3e12, "Pa"),
+    "modulus": (*MODULUS, "Pa"),
     "density": (10.0, 25_000.0, "kg/m3"),
-    "expansion": (1e-7, 3e-4, "1/K"),
+    "expansion": (*EXPANSION, "1/K"),
     "yield_strength": (1e5, 1e10, "Pa"),
-    "area": (1e-8, 10.0, "m2"),
+    "area": (1e-8, 1.0, "m2"),
     "axial_stiffness": (1e2, 1e12, "N"),
     "stiffness": (1.0, 1e12, "N/m"),
     "mass_per_length": (1e-5, 1e5, "kg/m"),
@@ -29,24 +30,31 @@ _RANGES: dict[str, tuple[float, float, str]] = {  # SI, ends included; zero is n
     "breaking_force": (1.0, 1e9, "N"),
     "wind_width": (1e-4, 10.0, "m"),
     "pretension": (0.1, 1e9, "N"),
+    "tension": (0.1, 1e9, "N"),
     "force": (1e-3, 1e9, "N"),
     "mass": (1e-6, 1e8, "kg"),
     "spring": (1.0, 1e12, "N/m"),
     "temperature change": (0.0, 200.0, "K"),
-    "move": (0.0, 10.0, "m"),
     "duration": (1e-6, 1e5, "s"),
     "time_step": (1e-8, 10.0, "s"),
     "gravity": (0.1, 30.0, "m/s2"),
     "temperature": (150.0, 500.0, "K"),
+    "pressure": (1.0, 1e5, "Pa"),
+    "thickness": (1e-4, 0.5, "m"),
+    "force density": (1e-2, 1e9, "N/m"),
+}
+_WORDS = {
+    "modulus": "soft plastics to diamond",
+    "density": "foam to platinum",
+    "expansion": "invar to soft plastics",
 }
 _LENGTHS = (1e-3, 5e3)  # m, of members
 _SLENDER = 400.0  # length over radius of gyration of a bar
 _STEPS = 2e6  # of a history
-_SHOWN = 5
 
 
 def implausible(parts: Parts, lengths: array[float]) -> Iterator[str]:
-    """Warnings about values outside their ranges."""
+    """Warnings about values outside their ranges, or that do not fit each other."""
     for what, key, value in _values(parts):
         low, high, unit = _RANGES[key]
         if value and not low <= abs(value) <= high:
@@ -54,6 +62,7 @@ def implausible(parts: Parts, lengths: array[float]) -> Iterator[str]:
     yield from _member_lengths(parts, lengths)
     yield from _slenderness(parts, lengths)
     yield from _above_yield(parts)
+    yield from disproportionate(parts, lengths)
     for analysis in parts.analyses:
         if isinstance(analysis, History):
             yield from _times(analysis, parts)
@@ -62,7 +71,8 @@ def implausible(parts: Parts, lengths: array[float]) -> Iterator[str]:
 def _outside(what: str, key: str, value: float, unit: str, low: float, high: float) -> str:
     text = quantity_text(value, unit)
     hint = ", mN is a thousandth of a newton" if unit == "N" and abs(value) < 1 else ""
-    range_text = f"the plausible range {low:g} to {high:g} {unit}"
+    range_text = f"the plausible range {quantity_text(low, unit)} to {quantity_text(high, unit)}"
+    range_text += f" ({_WORDS[key]})" if key in _WORDS else ""
     return f"{what}: {key} {text} is outside {range_text}: is its unit right{hint}?"
 
 
@@ -79,6 +89,9 @@ def _values(parts: Parts) -> Iterator[tuple[str, str, float | None]]:
     )
     of_sections += ("retardation_time", "breaking_force", "wind_width")
     yield from _fields("section", parts.sections, of_sections)
+    given_by = {material.name: material.expansion for material in parts.materials}
+    own = [s for s in parts.sections if s.expansion != given_by.get(s.material or "")]
+    yield from _fields("section", own, ("expansion",))
     for name, force in zip(parts.members.names, parts.members.pretension, strict=True):
         if force == force:
             yield f"member '{name}'", "pretension", force
@@ -93,22 +106,26 @@ def _values(parts: Parts) -> Iterator[tuple[str, str, float | None]]:
         yield from ((what, "temperature change", change) for _, change in case.temperature_change)
         yield from ((what, "mass", mass) for _, mass in case.masses)
         yield from ((what, "force", max(map(abs, force))) for _, force in case.forces)
-        yield from ((what, "move", max(map(abs, move))) for _, move in case.movements)
+        yield from ((what, "pressure", pressure) for wind in case.wind for pressure in wind.pressures)
+        for ice in case.ice:
+            yield what, "thickness", ice.thickness
+            yield what, "density", ice.density
     for event in parts.events.values():
         yield f"event '{event.name}'", "duration", event.duration
         yield from ((f"event '{event.name}'", "force", max(map(abs, f))) for _, f in event.forces)
+    for analysis in parts.analyses:
+        what = f"analysis '{analysis.name}'"
+        if isinstance(analysis, FormFinding):
+            yield from ((what, "force density", value) for _, value in analysis.force_densities)
+        if isinstance(analysis, Tune):
+            tensions = [t.tension for t in analysis.targets if isinstance(t, TensionTarget)]
+            yield from ((what, "tension", force) for force in tensions)
 
 
 def _fields(what: str, things: Any, keys: tuple[str, ...]) -> Iterator[tuple[str, str, float | None]]:
     for thing in things:
         for key in keys:
             yield f"{what} '{thing.name}'", key, getattr(thing, key)
-
-
-def several(names: list[str], shown: int = _SHOWN) -> str:
-    """Some names, and how many more there are."""
-    more = f" and {len(names) - shown} more" if len(names) > shown else ""
-    return ", ".join(f"'{name}'" for name in names[:shown]) + more
 
 
 def _member_lengths(parts: Parts, lengths: array[float]) -> Iterator[str]:
@@ -130,10 +147,12 @@ def _slenderness(parts: Parts, lengths: array[float]) -> Iterator[str]:
     radii = [section.radius_of_gyration for section in parts.sections]
     if not any(radii):
         return
-    tie = KINDS.index("tension-only")
+    ties = (KINDS.index("tension-only"), KINDS.index("hanging"))
     reach = [_SLENDER * (radius or math.inf) for radius in radii]
     columns = zip(m.kind, m.section, lengths, m.names, strict=True)
-    slender = [name for kind, section, length, name in columns if length > reach[section] and kind != tie]
+    slender = [
+        name for kind, section, length, name in columns if length > reach[section] and kind not in ties
+    ]
     if slender:
         ratio = f"slenderness above {_SLENDER:g}"
         yield f"members {several(slender)}: {ratio}: they buckle under little compression"

@@ -31,7 +31,11 @@ class Positions:
         self.text = text.replace("\r\n", "\n")
         self._found: dict[Path, int] = {(): 0}
         self._lines = [0, *(m.end() for m in re.finditer("\n", self.text))]
+        self.last: Path = ()  # the table that is open at the end
         self._follow()
+
+    def __contains__(self, path: Path) -> bool:
+        return path in self._found
 
     def of(self, path: Path) -> tuple[int, int]:
         """Line and column of a path, or of the nearest thing around it."""
@@ -60,6 +64,7 @@ class Positions:
             else:
                 at = self._pair(at, table)
             at = self._gap(at)
+        self.last = table
 
     def _header(self, start: int, counts: dict[Path, int]) -> tuple[Path, int]:
         many = self.text[start + 1] == "["

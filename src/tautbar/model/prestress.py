@@ -13,6 +13,9 @@ from tautbar.model.positions import Path
 from tautbar.model.structure import Drawing
 
 _ALLOWANCE = 1.01  # sags and least tensions are judged by formulas good to about 1 %
+_MOST_STRAIN = 10.0  # of a rope as drawn: beyond what the softest rubber bears
+_HANGING = KINDS.index("hanging")
+_GIVEN = ("pretension", "unstressed_length", "slack", "sag")
 
 
 @dataclass(frozen=True)
@@ -46,10 +49,22 @@ def prestressed(parts: Parts) -> Iterator[Prestressed]:
     m = parts.members
     for given in ("pretension", "unstressed_length", "slack"):
         for i, value in enumerate(getattr(m, given)):
-            if value == value and m.section[i] >= 0:
+            if value == value and m.section[i] >= 0 and m.kind[i] != _HANGING:
                 section = parts.sections[m.section[i]]
                 length = drawn_length(parts, m.start[i], m.end[i])
                 yield Prestressed(i, given, _force(section, length, given, value), section, length)
+
+
+def ropes(parts: Parts) -> Iterator[Hanging]:
+    """Every hanging member, those that are one catenary as if they were a single piece."""
+    yield from parts.members.hanging
+    m = parts.members
+    for i, kind in enumerate(m.kind):
+        if kind == _HANGING:
+            given, value = next(
+                ((key, v) for key in _GIVEN if (v := getattr(m, key)[i]) == v), ("", math.nan)
+            )
+            yield Hanging(m.names[i], m.start[i], m.end[i], range(i, i + 1), range(0), given, value)
 
 
 def _force(section: Section, length: float, given: str, value: float) -> float:
@@ -73,17 +88,20 @@ def strength(section: Section) -> float:
 
 def check_lengths(parts: Parts, drawing: Drawing, mistakes: Mistakes) -> None:
     """Note pretensions, lengths and sags that cannot be."""
+    later = set(parts.members.absent)  # these are put in between joints that have moved by then
     for p in prestressed(parts):
         problem = _impossible(p, parts.members)
-        if not problem and p.force > strength(p.section):
+        waits = p.member in later and p.given == "unstressed_length"
+        if not problem and not waits and p.force > strength(p.section):
             problem = _too_strong(p.force, p.section)
         if problem:
             mistakes.add((*drawing.paths[p.member], p.given), problem)
-    for h in parts.members.hanging:
+    for h in ropes(parts):
         path = drawing.paths[h.members.start] if h.members else ()
         position = parts.members.section[h.members.start] if h.members else -1
+        waits = h.given == "unstressed_length" and h.members.start in later
         if position >= 0 and h.start >= 0 and h.end >= 0 and h.value == h.value:
-            _check_hanging(parts, h, parts.sections[position], path, mistakes)
+            _check_hanging(parts, h, parts.sections[position], (*path, h.given), mistakes, waits)
 
 
 def _impossible(p: Prestressed, members: Members) -> str:
@@ -102,8 +120,9 @@ def _impossible(p: Prestressed, members: Members) -> str:
 
 
 def _too_strong(force: float, section: Section) -> str:
-    share = f" times end_factor {section.end_factor:g}" if section.end_factor != 1 else ""
-    breaking = f"the breaking force {_newtons(section.breaking_force or 0.0)}{share}"
+    breaking = f"the breaking force {_newtons(section.breaking_force or 0.0)}"
+    if section.end_factor != 1:
+        breaking += f" times end_factor {section.end_factor:g}, {_newtons(strength(section))}"
     return f"its force as drawn, {_newtons(force)}, is above {breaking}"
 
 
@@ -111,8 +130,9 @@ def _newtons(force: float) -> str:
     return f"{force / 1e3:.6g} kN"
 
 
-def _check_hanging(parts: Parts, h: Hanging, section: Section, path: Path, mistakes: Mistakes) -> None:
-    where = (*path, h.given)
+def _check_hanging(
+    parts: Parts, h: Hanging, section: Section, where: Path, mistakes: Mistakes, waits: bool
+) -> None:
     up = parts.up
     columns = (parts.joints.x, parts.joints.y, parts.joints.z)
     rise = abs(columns[up][h.end] - columns[up][h.start])
@@ -123,22 +143,29 @@ def _check_hanging(parts: Parts, h: Hanging, section: Section, path: Path, mista
         hint = "give mass_per_length to its section, or use a tension-only member"
         mistakes.add(where, "a hanging member needs weight, its section has no mass or gravity is 0", hint)
         return
+    if waits:
+        return
     force = h.value if h.given == "pretension" else 0.0
+    stiffness = section.axial_stiffness or (section.stiffness or 0.0) * chord
     if h.given == "pretension":
         least = least_tension(span, rise, weight)
-        if h.value * _ALLOWANCE < least:
-            what = f"with these ends and this weight its lower end pulls at least {_newtons(least)}"
-            mistakes.add(where, what)
+        stretch = 1 + (least + weight * rise) / stiffness if stiffness else 1.0  # it weighs less by this
+        if h.value * _ALLOWANCE * stretch < least:
+            possible = f"about {least / stretch / 1e3:.3g} kN"
+            mistakes.add(where, f"with these ends and this weight its lower end pulls at least {possible}")
     elif h.given == "sag":
         if span <= 1e-6 * chord:
             mistakes.add(where, "its ends are above each other, so it cannot have a sag")
             return
         force = weight * chord * span / (8 * h.value) * chord / span / _ALLOWANCE
-    elif h.given == "unstressed_length" and section.axial_stiffness is not None:
-        force = section.axial_stiffness * (chord - h.value) / h.value
+    elif h.given == "unstressed_length":
+        force = _force(section, chord, h.given, h.value)
+    less = " (less than possible)" if h.given in ("sag", "unstressed_length") else ""
     if force > strength(section):
-        less = " (less than possible)" if h.given in ("sag", "unstressed_length") else ""
         mistakes.add(where, _too_strong(force, section) + less)
+    elif stiffness and force > _MOST_STRAIN * stiffness:
+        what = f"as drawn it would be stretched by {force / stiffness:.3g} times its length{less}"
+        mistakes.add(where, what)
 
 
 def least_tension(span: float, rise: float, weight: float) -> float:

@@ -6,11 +6,16 @@ import re
 import tomllib
 
 from tautbar.errors import Mistake
+from tautbar.model.twice import twice
 
 _NUMBER = r"[-+]?[\d.]+(?:[eE][-+]?\d+)?"
 _BEFORE = r"(?:[=,\[{]\s*)"  # a value begins
 _SLIPS = (
-    (rf"=\s*{_NUMBER}\s*,\s*\d", "write decimals with a point"),
+    (r"=\s*\(|[“”‘’]", 'a list has square brackets, [9, 1], and text has straight quotes, "A"'),
+    (r"^\s*\[[^\]]*$|^\s*\[\[[^\]]*\]\s*$", "close the brackets: [table], or [[table]] for one of a list"),
+    (rf"\[[^\]]*{_NUMBER}\s*;", "separate the values of a list with commas"),
+    (r",\s*}", "leave out the comma before the closing brace"),
+    (rf"=\s*{_NUMBER}\s*,\s*\d", "write decimals with a point, and lists in square brackets"),
     (rf"{_BEFORE}[-+]?\.\d", "write a digit before the point, 0.5"),
     (rf"{_BEFORE}[-+]?\d+\.\s*(?:$|[#,\]}}])", "write a digit after the point, 5.0"),
     (rf"{_BEFORE}{_NUMBER}\s*[A-Za-zµ%°]", 'put a quantity with a unit in quotes, "12 mm"'),
@@ -20,7 +25,6 @@ _SLIPS = (
     (r"^\s*[\w.\"-]+\s*:", "write = between key and value"),
     (r"^\s*[\w-]+\s+[\w-]+.*=", "put a key that has spaces in quotes"),
 )
-_TWICE = re.compile(r"Cannot (?:overwrite|declare|redefine|mutate)", re.I)
 
 
 def syntax_mistake(text: str, file: str, error: tomllib.TOMLDecodeError) -> Mistake:
@@ -34,15 +38,20 @@ def syntax_mistake(text: str, file: str, error: tomllib.TOMLDecodeError) -> Mist
     else:  # at the end of the document
         line = max((i for i, shown in enumerate(lines, 1) if shown.strip()), default=1)
         column = len(lines[line - 1]) + 1
+    again = twice(what, lines, line)
+    if again is not None:
+        return Mistake("", again.what, again.hint, file, again.line, again.column, lines[again.line - 1])
     shown = lines[line - 1]
-    if _TWICE.match(what):
-        what = f"a name is used twice: {what[0].lower()}{what[1:]}"
-    return Mistake("", what, _hint(shown, what), file, line, column, shown)
+    if what.startswith("Illegal character '\\n'"):
+        what = "the text in quotes does not end in this line"
+    double = re.match(r"Duplicate inline table key ('.*')", what)
+    if double:
+        what = f"{double[1]} is there twice in these braces"
+        return Mistake("", what, "leave one out", file, line, column, shown)
+    return Mistake("", what, _hint(shown), file, line, column, shown)
 
 
-def _hint(line: str, what: str) -> str:
-    if "twice" in what:
-        return "each key and each [table] may stand once; a list of tables has [[double brackets]]"
+def _hint(line: str) -> str:
     bare = line.split("#", 1)[0].rstrip() if '"' not in line else line
     for pattern, advice in _SLIPS:
         if re.search(pattern, bare):

@@ -6,11 +6,12 @@ import math
 import operator
 from array import array
 from collections import defaultdict
-from collections.abc import Iterator
-from dataclasses import dataclass
+from collections.abc import Container, Iterator
+from dataclasses import dataclass, replace
 
-from tautbar.model.mistakes import Mistakes
+from tautbar.model.mistakes import Mistakes, several
 from tautbar.model.parts import AXES, History, Modes, Parts, Section, Vector
+from tautbar.model.presence import Presence, presences
 from tautbar.model.structure import Drawing
 
 _CLOSE = 1e-9  # of the size of the structure: joints nearer than this are in one place
@@ -37,6 +38,7 @@ class Soundness:
         self._supported()
         self._masses()
         self._expansion()
+        self._widths()
         self._movements()
         self._events()
 
@@ -59,7 +61,7 @@ class Soundness:
     def _lonely_joints(self) -> None:
         used = set(self.parts.members.start) | set(self.parts.members.end)
         for i, path in enumerate(self.drawing.joint_paths):
-            if i not in used:
+            if i not in used and self.drawing.joint_names[i] not in self.drawing.meant:
                 self.mistakes.add(path, "no member goes to this joint", "remove it, or add a member")
 
     def _supported(self) -> None:
@@ -70,22 +72,40 @@ class Soundness:
         if not self.parts.supports and not self.mistakes.at("supports"):
             self.mistakes.add((), "nothing is supported", 'add [[supports]], or unsupported = "allowed"')
             return
-        root = joined(self.parts)
-        held = {root[j] for s in self.parts.supports for j in s.joints}
-        loose: dict[int, list[int]] = defaultdict(list)
-        for start, end in zip(self.parts.members.start, self.parts.members.end, strict=True):
+        for joints in self._loose(Presence()):
+            what = f"the part of joints {several(joints)} is not connected to any support"
+            hint = 'support it, or allow it to float with unsupported = "allowed"'
+            place = self.drawing.joint_paths[self.parts.joints.index[joints[0]]]
+            self.mistakes.add(place, what, hint)
+        self._stages()
+
+    def _stages(self) -> None:
+        """The same wherever members or supports are not there."""
+        if self.mistakes.at("analyses") or self.mistakes.at("members") or self.mistakes.at("joints"):
+            return
+        seen = {Presence()}
+        for name, presence in presences(self.parts).items():
+            there = replace(presence, masses=frozenset())
+            for joints in self._loose(there) if there not in seen else ():
+                what = (
+                    f"of what is there, the part of joints {several(joints)} is not connected to any support"
+                )
+                self.mistakes.add(("analyses", name), what, "put in what holds it, or take it away too")
+            seen.add(there)
+
+    def _loose(self, presence: Presence) -> Iterator[list[str]]:
+        """Names of the joints of each part that no support holds."""
+        m, root = self.parts.members, joined(self.parts, presence.members)
+        held = {root[j] for s in self.parts.supports if s.name not in presence.supports for j in s.joints}
+        loose: dict[int, list[str]] = defaultdict(list)
+        for start, end in zip(m.start, m.end, strict=True):
             if start < 0 or end < 0:  # its other end is unknown: this part may be held through it
                 held |= {root[j] for j in (start, end) if j >= 0}
         for joint, of in enumerate(root):
             if of not in held:
-                loose[of].append(joint)
-        for joints in loose.values():
-            if len(joints) > 1:  # a single one has no member, which is said already
-                names = ", ".join(f"'{self.parts.joints.names[j]}'" for j in joints[:6])
-                more = f" and {len(joints) - 6} more joints" if len(joints) > 6 else ""
-                what = f"the part of joints {names}{more} is not connected to any support"
-                hint = 'support it, or allow it to float with unsupported = "allowed"'
-                self.mistakes.add(self.drawing.joint_paths[joints[0]], what, hint)
+                loose[of].append(self.parts.joints.names[joint])
+        # a single joint has no member: that is said elsewhere, or it is not there yet
+        yield from (joints for joints in loose.values() if len(joints) > 1)
 
     def _masses(self) -> None:
         """Sections must say their mass where a weight or a dynamic analysis needs it."""
@@ -126,6 +146,23 @@ class Soundness:
                 hint = "give it to the section or its material; expansion = 0 to mean none"
                 self.mistakes.add(("load_cases", name), f"{what} expansion", hint)
 
+    def _widths(self) -> None:
+        """Wind and ice act only on members that say how wide they are."""
+        column = self.parts.members.section
+        for name, case in self.parts.load_cases.items():
+            acting = [(("wind", i), wind.members) for i, wind in enumerate(case.wind)]
+            acting += [(("ice", i), ice.members) for i, ice in enumerate(case.ice)]
+            for where, members in acting:
+                lacking: dict[str, str] = {}
+                for i in members:
+                    section = self.parts.sections[column[i]] if column[i] >= 0 else None
+                    if section is not None and section.wind_width is None and not self._doubtful(section):
+                        lacking.setdefault(section.name, self.parts.members.names[i])
+                for section_name, member in lacking.items():
+                    what = f"acts on member '{member}', whose section '{section_name}' has no wind_width"
+                    hint = "give it to the section; wind_width = 0 to mean none"
+                    self.mistakes.add(("load_cases", name, *where), what, hint)
+
     def _movements(self) -> None:
         """Only held directions can be moved."""
         supports = self.parts.supports
@@ -142,7 +179,7 @@ class Soundness:
     def _free_part(self, joint: int, move: Vector) -> str:
         """The axes in which a movement goes where nothing holds the joint."""
         here = [s for s in self.parts.supports if joint in s.joints]
-        fixed = {axis for s in here for axis in s.fixed}
+        fixed = {axis for s in here for axis in (*s.fixed, s.only_pushes) if axis is not None}
         left = [0.0 if axis in fixed else move[axis] for axis in range(3)]
         size = math.hypot(*left)
         for along in (s.along for s in here if s.along is not None):
@@ -162,7 +199,7 @@ class Soundness:
                 self.mistakes.add(("events", name), "no analysis uses this event", hint)
 
 
-def joined(parts: Parts) -> array[int]:
+def joined(parts: Parts, absent: Container[int] = ()) -> array[int]:
     """For each joint a number that joints joined by members have in common."""
     root = array("q", range(len(parts.joints)))
 
@@ -172,8 +209,8 @@ def joined(parts: Parts) -> array[int]:
             joint = root[joint]
         return joint
 
-    for start, end in zip(parts.members.start, parts.members.end, strict=True):
-        if start >= 0 and end >= 0:
+    for i, (start, end) in enumerate(zip(parts.members.start, parts.members.end, strict=True)):
+        if start >= 0 and end >= 0 and i not in absent:
             a, b = top(start), top(end)
             if a != b:
                 root[max(a, b)] = min(a, b)
@@ -193,4 +230,5 @@ def has_mass(parts: Parts) -> bool:
         any(section.mass_per_length for section in used_sections(parts))
         or any(m.mass or m.per_length for m in parts.masses)
         or any(mass for case in parts.load_cases.values() for _, mass in case.masses)
+        or any(case.ice for case in parts.load_cases.values())
     )

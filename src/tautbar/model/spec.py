@@ -25,9 +25,13 @@ class Spec:
 
 @dataclass(frozen=True, kw_only=True)
 class Text(Spec):
-    """Quoted text, perhaps one of a few words; ``is_name``: it must do for a name."""
+    """Quoted text, perhaps one of a few words; ``is_name``: it must do for a name.
+
+    ``meant`` says what to write for words that are none of the choices but likely to be tried.
+    """
 
     choices: tuple[str, ...] = ()
+    meant: Mapping[str, str] = field(default_factory=dict)
     later: tuple[str, ...] = ()
     is_name: bool = False
     accepts: ClassVar[tuple[str, ...]] = ("text",)
@@ -94,10 +98,14 @@ class Row(Spec):
 
 @dataclass(frozen=True, kw_only=True)
 class Table(Spec):
-    """Keys and what they hold; ``note`` and ``source`` are always allowed."""
+    """Keys and what they hold; ``note`` and ``source`` are always allowed.
+
+    ``synonyms`` are words likely to be tried for a key.
+    """
 
     fields: Mapping[str, Spec] = field(default_factory=dict)
     later: tuple[str, ...] = ()
+    synonyms: Mapping[str, str] = field(default_factory=dict)
     accepts: ClassVar[tuple[str, ...]] = ("table",)
 
 

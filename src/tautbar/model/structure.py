@@ -3,6 +3,7 @@ members to single ones."""
 
 from __future__ import annotations
 
+import math
 from array import array
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
@@ -10,9 +11,9 @@ from itertools import count, repeat
 from operator import eq
 from typing import Any
 
-from tautbar.model.format import LENGTH_KEYS
-from tautbar.model.lookup import groups_of
-from tautbar.model.mistakes import Mistakes, near
+from tautbar.model.format_structure import LENGTH_KEYS
+from tautbar.model.lookup import Whole, Wholes, groups_of
+from tautbar.model.mistakes import Mistakes, near, nearest
 from tautbar.model.parts import KINDS, Hanging, Joints, Members
 from tautbar.model.positions import Path
 from tautbar.model.tables import Columns
@@ -44,11 +45,15 @@ class Drawing:
     end: array[int] = field(default_factory=lambda: array("q"))
     kind: array[int] = field(default_factory=lambda: array("q"))
     section: array[int] = field(default_factory=lambda: array("q"))
-    lengths: tuple[array[float], array[float], array[float]] = field(
-        default_factory=lambda: (array("d"), array("d"), array("d"))
-    )
+    lengths: tuple[array[float], array[float], array[float], array[float]] = field(
+        default_factory=lambda: (array("d"), array("d"), array("d"), array("d"))
+    )  # in the order of LENGTH_KEYS
     hanging: list[Hanging] = field(default_factory=list)
+    absent: list[int] = field(default_factory=list)
+    wholes: list[Whole] = field(default_factory=list)
+    unsure: list[str] = field(default_factory=list)  # beginnings of names that wrong entries may have meant
     unknown: int = 0  # joints that were named but are not there
+    meant: set[str] = field(default_factory=set)  # joints that these names probably meant
 
     def add_joints(self, words: Mapping[str, Any], table: Columns | None, axes: tuple[int, ...]) -> None:
         """Joints of the model file, then those of the table."""
@@ -94,7 +99,10 @@ class Drawing:
             self._add_table(table)
 
     def _add_entry(self, entry: dict[str, Any], path: Path) -> None:
-        name = entry["name"]
+        first = len(self.names)
+        name = entry["name"] or f"member {path[-1] + 1}"  # type: ignore[operator]
+        if entry["name"] is None:
+            self.unsure.append("")
         ways = [way for way in ("chain", "pairs") if way in entry]
         single = "from" in entry or "to" in entry
         if len(ways) + single != 1:
@@ -104,11 +112,43 @@ class Drawing:
             for key in ("from", "to"):
                 if key not in entry:
                     self.mistakes.add(path, f"'{key}' is missing", "joint at its other end")
-            if name is not None:
-                self._add(name, (entry.get("from"), entry.get("to")), entry, path, ("from", "to"))
-        elif name is not None and self._take(name, path):
-            for number, (ends, keys) in enumerate(_ends_of(entry, ways[0]), 1):
-                self._add(f"{name}.{number}", ends, entry, path, keys)
+            self._add(name, (entry.get("from"), entry.get("to")), entry, path, ("from", "to"))
+        elif self._take(name, path):
+            self._add_many(name, entry, path, ways[0])
+        if entry.get("rope") and "chain" not in entry:
+            self.mistakes.add((*path, "rope"), "rope = true is for a chain, one piece clamped at its joints")
+        if entry.get("absent", False) is not False:  # None: wrong, but probably absent
+            self.absent += range(first, len(self.names))
+
+    def _add_many(self, name: str, entry: dict[str, Any], path: Path, way: str) -> None:
+        """The members of a chain or of pairs; those of a rope have their shares of its length."""
+        ends = list(_ends_of(entry, way))
+        rope = way == "chain" and bool(entry.get("rope"))
+        if rope and "sag" in entry:
+            what = "a sag is of one span, a rope = true has several"
+            self.mistakes.add((*path, "sag"), what, "give unstressed_length, slack or pretension")
+        shares = self._shares([pair for pair, _ in ends]) if rope else [1.0] * len(ends)
+        blocks = []
+        for number, ((pair, keys), share) in enumerate(zip(ends, shares, strict=True), 1):
+            own = {k: v * share if k in _SHARED and v is not None else v for k, v in entry.items()}
+            before = len(self.names)
+            self._add(f"{name}.{number}", pair, own, path, keys)
+            if rope and len(self.names) > before:
+                members = tuple(range(before, len(self.names)))
+                blocks.append((members, share / len(members)))
+        if blocks:
+            self.wholes.append(Whole(name, tuple(blocks)))
+
+    def _shares(self, pairs: list[tuple[Any, Any]]) -> list[float]:
+        """Shares of the drawn length of a chain; NaN where a joint is not known."""
+
+        def point(name: Any) -> tuple[float, ...]:
+            found = self.joint_index.get(name, -1)
+            return tuple(c[found] if found >= 0 else NAN for c in self.coordinates)
+
+        lengths = [math.dist(point(start), point(end)) for start, end in pairs]
+        total = sum(lengths)
+        return [length / total if total else NAN for length in lengths]
 
     def _take(self, name: str, path: Path) -> bool:
         if name in self.taken:
@@ -130,14 +170,15 @@ class Drawing:
             self.mistakes.add(
                 (*path, given[1]), f"{' and '.join(given)} are given", "give at most one of them"
             )
-        if entry.get("kind") == "hanging":
+        kind = entry.get("kind")
+        if kind == "hanging" or (kind is None and {"sag", "pieces"} & entry.keys()):  # None: a wrong one
             self._add_hanging(name, (start, end, section), entry, path)
             return
         for key in ("sag", "pieces"):
             if key in entry:
                 self.mistakes.add((*path, key), f"'{key}' is only for members of kind \"hanging\"")
-        kind = KINDS.index(entry["kind"]) if entry.get("kind") in KINDS else 0
-        self._append(name, (start, end, section, kind), [_value(entry, k) for k in LENGTH_KEYS[:3]], path)
+        position = _POSITIONS.get(kind or "", 0)
+        self._append(name, (start, end, section, position), [_value(entry, k) for k in LENGTH_KEYS], path)
 
     def _append(self, name: str, where: tuple[int, int, int, int], lengths: list[float], path: Path) -> None:
         self.names.append(name)
@@ -150,6 +191,7 @@ class Drawing:
     def _add_hanging(
         self, name: str, where: tuple[int, int, int], entry: Mapping[str, Any], path: Path
     ) -> None:
+        """One catenary, or straight pieces."""
         start, end, section = where
         given = [key for key in LENGTH_KEYS if key in entry]
         if not given:
@@ -157,19 +199,20 @@ class Drawing:
                 path, "a hanging member must say how long it is", "give one of sag, " + _HOW_LONG
             )
         if "pieces" not in entry:
-            self.mistakes.add(
-                path, "a hanging member needs pieces in this version", "for example pieces = 16"
-            )
-        pieces = entry.get("pieces")
-        if pieces is None or not given:
+            self._append(name, (*where, _POSITIONS["hanging"]), [_value(entry, k) for k in LENGTH_KEYS], path)
             return
+        pieces = entry["pieces"]
+        if pieces is None:  # a wrong number: what speaks of any piece may be right
+            pieces, self.unsure = 2, [*self.unsure, f"{name}.", f"{name}@"]
+        key = given[0] if given else ""
         members = range(len(self.names), len(self.names) + pieces)
-        self.hanging.append(Hanging(name, start, end, members, range(0), given[0], _value(entry, given[0])))
+        self.hanging.append(Hanging(name, start, end, members, range(0), key, _value(entry, key)))
+        self.wholes.append(Whole(name, ((tuple(members), 1 / pieces),), in_pieces=True))
         for k in range(pieces):  # the joints between are numbered once all joints are known
             piece = f"{name}.{k + 1}"
             self._take(piece, path)
             ends = (start if k == 0 else -1, end if k == pieces - 1 else -1)
-            self._append(piece, (*ends, section, _POSITIONS["tension-only"]), [NAN, NAN, NAN], path)
+            self._append(piece, (*ends, section, _POSITIONS["tension-only"]), [NAN] * len(LENGTH_KEYS), path)
 
     def _joint(self, name: Any, path: Path, key: Any) -> int:
         if name is None:
@@ -183,7 +226,10 @@ class Drawing:
     def _near(self, name: str) -> str:
         """A hint, while there are few unknown joints: finding the nearest of many names takes long."""
         self.unknown += 1
-        return near(name, self.joint_index) if self.unknown <= _HINTS else ""
+        if self.unknown > _HINTS:
+            return ""
+        self.meant.add(nearest(name, self.joint_index))
+        return near(name, self.joint_index)
 
     def _section(self, name: Any, path: Path) -> int:
         if name is None:
@@ -219,7 +265,7 @@ class Drawing:
             or -1 in end
             or -1 in section
             or any(map(eq, start, end))
-            or not set(kinds) <= _POSITIONS.keys()
+            or not set(kinds) <= _POSITIONS.keys() - {"hanging"}
             or not lengths.keys() <= set(LENGTH_KEYS[:3])
             or len(lengths) > 1
         ):
@@ -230,7 +276,7 @@ class Drawing:
             (self.start, start), (self.end, end), (self.section, section), (self.kind, kind)
         ):  # fmt: skip
             mine.extend(column)
-        for given, key in zip(self.lengths, LENGTH_KEYS[:3], strict=True):
+        for given, key in zip(self.lengths, LENGTH_KEYS, strict=True):
             given.extend(lengths.get(key, absent))
         self.names += names
         self.paths += paths
@@ -250,6 +296,10 @@ class Drawing:
             if name:
                 self._add(name, (start or None, end or None), entry, paths[i], heads)
 
+    def all_wholes(self) -> Wholes:
+        """Members that are one piece, the longest first."""
+        return Wholes(tuple(sorted(self.wholes, key=lambda whole: -len(whole.members))))
+
     def finish(self) -> tuple[Joints, Members]:
         """The columns, with the joints between the pieces of hanging members at the end."""
         hanging = tuple(self._place_joints(h) for h in self.hanging)
@@ -265,6 +315,7 @@ class Drawing:
             index,
             groups_of(self.names, index),
             hanging,
+            tuple(self.absent),
         )
         return joints, members
 
@@ -285,6 +336,7 @@ class Drawing:
         return Hanging(h.name, h.start, h.end, h.members, range(first, first + pieces - 1), h.given, h.value)
 
 
+_SHARED = ("unstressed_length", "slack")  # keys of a rope that are of the whole
 _HOW_LONG = ", ".join(key for key in LENGTH_KEYS if key != "sag")
 
 

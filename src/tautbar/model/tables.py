@@ -9,8 +9,8 @@ from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass, field
 
 from tautbar.model import spec as s
-from tautbar.model.checking import NOTES, Checker, out_of_bounds
-from tautbar.model.mistakes import near
+from tautbar.model.checking import NOTES, Checker, meant, out_of_bounds
+from tautbar.model.mistakes import near, nearest
 from tautbar.model.positions import Path
 from tautbar.model.source import bare_name, rows_of, separator_of
 from tautbar.units import BadQuantity, unit
@@ -71,6 +71,7 @@ def _check_heads(c: Checker, heads: list[str], wanted: Mapping[str, s.Spec], pat
             found[name] = position
         elif name not in NOTES:
             c.wrong((*path, -1, head), f"there is no column '{name}' here", near(name, wanted))
+            missing = [column for column in missing if column != nearest(name, wanted)]
     for name in missing:
         if name not in found:
             c.wrong(
@@ -102,12 +103,11 @@ def _texts(c: Checker, columns: Columns, name: str, of: s.Spec, cells: tuple[str
         default = str(of.default or "")
         stripped = [cell or default for cell in stripped]
         strange = [i for i, cell in enumerate(stripped) if cell not in of.choices]
-        choices = of.choices
         _note(
             c,
             strange,
             lambda i: columns.place(i, name),
-            lambda i: f"'{stripped[i]}' is not one of the words known here ({near(stripped[i], choices)})",
+            lambda i: f"'{stripped[i]}' is not one of the words known here ({meant(of, stripped[i])})",
         )
     return stripped
 
