@@ -8,13 +8,15 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tautbar.analyses.context import Context
+from tautbar.analyses.scene import Scene
 from tautbar.model.parts import KINDS
 from tautbar.records.fields import Field
 
 
 def model_fields(context: Context) -> dict[str, Field]:
     """Fields by their path under ``/model``."""
-    parts, s = context.parts, context.system.structure
+    parts, scene = context.parts, context.first_scene()
+    s = scene.structure
     member = ("member",)
     sections = [sec.name for sec in parts.sections]
     return {
@@ -27,15 +29,16 @@ def model_fields(context: Context) -> dict[str, Field]:
         ),
         "members/kind": Field(_text([KINDS[k] for k in s.kind]), "1", "kind of member", member),
         "members/section": Field(_text([sections[i] for i in parts.members.section]), "1", "section", member),
+        "members/present": Field(s.present.astype(np.int8), "1", "1: there from the first", member),
         "members/axial_stiffness": Field(s.EA, "N", "axial stiffness EA", member),
         "members/unstressed_length": Field(s.L0, "m", "unstressed length", member),
         "members/mass_per_length": Field(s.m, "kg/m", "mass per unstressed length", member),
         "members/retardation_time": Field(s.tau, "s", "Kelvin-Voigt retardation time", member),
         "masses": Field(s.joint_mass, "kg", "mass at the joint, besides its members", ("joint",)),
         "supports/held": Field(
-            _held(context), "1", "1 held, 0 free, between: inclined", ("joint", "direction")
+            _held(scene), "1", "1 held, 0 free, between: inclined", ("joint", "direction")
         ),
-        "supports/spring": Field(_springs(context), "N/m", "spring to ground", ("joint", "direction")),
+        "supports/spring": Field(_springs(scene), "N/m", "spring to ground", ("joint", "direction")),
     }
 
 
@@ -52,11 +55,11 @@ def _groups(context: Context) -> list[str]:
     return out
 
 
-def _held(context: Context) -> NDArray[np.float64]:
+def _held(scene: Scene) -> NDArray[np.float64]:
     """How much of each direction is held (J, 3): the diagonal of I - T T^T."""
-    T = context.system.freedom.T
+    T = scene.system.freedom.T
     return np.asarray(1.0 - T.multiply(T).sum(axis=1)).reshape(3, -1).T
 
 
-def _springs(context: Context) -> NDArray[np.float64]:
-    return np.asarray(context.system.freedom.spring.diagonal()).reshape(3, -1).T
+def _springs(scene: Scene) -> NDArray[np.float64]:
+    return np.asarray(scene.system.freedom.spring.diagonal()).reshape(3, -1).T

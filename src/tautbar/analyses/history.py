@@ -9,14 +9,17 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from tautbar.analyses.context import Context, Rest
+from tautbar.analyses.context import Context
 from tautbar.analyses.history_audit import Tally
-from tautbar.analyses.history_words import audit_lines, outcome, warnings
+from tautbar.analyses.history_facts import Choices, Facts
+from tautbar.analyses.history_warnings import warnings
+from tautbar.analyses.history_words import audit_lines, outcome
+from tautbar.analyses.pieces import begin, finer_members, piece_names
+from tautbar.analyses.words import changes
 from tautbar.errors import NotConverged
-from tautbar.mechanics.damping import Rayleigh, rayleigh
 from tautbar.mechanics.product import Product
 from tautbar.mechanics.pulses import event_forces
-from tautbar.model.parts import History, Loading
+from tautbar.model.parts import History
 from tautbar.records.fields import Field, Record
 from tautbar.records.frames import Frame, StreamedField
 from tautbar.solvers.conserving import EnergyConserving
@@ -31,48 +34,17 @@ SOURCES = {
 }
 
 
-@dataclass(frozen=True)
-class Choices:
-    """What the analysis leaves open, decided; and why, in words."""
-
-    method: str
-    lumped: bool
-    mass_part: bool
-    rayleigh: Rayleigh
-
-    @classmethod
-    def of(cls, context: Context, analysis: History) -> Choices:
-        can_slack = bool(context.system.structure.can_slack.any())
-        method = analysis.method or ("energy-conserving" if can_slack else "newmark")
-        lumped = analysis.mass == "lumped" if analysis.mass else can_slack
-        asked = analysis.damping.mass_part if analysis.damping else None
-        falls = can_slack or context.parts.floating
-        mass_part = (not falls) if asked is None else asked
-        return cls(method, lumped, mass_part, rayleigh(analysis.damping, mass_part))
-
-
 @dataclass
-class HistoryRun:
+class HistoryRun(Facts):
     """One history on its way; `frames` marches, `record` tells what was found."""
 
-    context: Context
-    analysis: History
-    rest: Rest
-    choices: Choices
-    motion: Motion
-    tally: Tally
     began: float = field(default_factory=time.perf_counter)
-    failure: str = ""
 
     kind = "history"
 
     @property
     def name(self) -> str:
         return self.analysis.name
-
-    @property
-    def duration(self) -> float:
-        return self.analysis.duration
 
     @property
     def acting(self) -> tuple[str, ...]:
@@ -91,7 +63,8 @@ class HistoryRun:
             "geometry": a.geometry,
             "rayleigh_mass_part": c.rayleigh.mass_part,
             "rayleigh_stiffness_part": c.rayleigh.stiffness_part,
-        }
+            "pieces": a.pieces or "as the model says",
+        } | dict(self.changed)
         if c.method == "newmark":
             return out | {"beta": a.beta, "gamma": a.gamma}
         return out | {"snap_loss": a.snap_loss}
@@ -111,8 +84,8 @@ class HistoryRun:
         store = self.analysis.store
         J = len(self.context.joint_names) if store.joints is None else len(store.joints)
         N = len(self.context.member_names) if store.members is None else len(store.members)
-        joint = ("joint" if store.joints is None else "stored_joint", "direction")
-        member = ("member" if store.members is None else "stored_member",)
+        joint = (self.rest.scene.joint_axis if store.joints is None else "stored_joint", "direction")
+        member = (self.rest.scene.member_axis if store.members is None else "stored_member",)
         return {
             "displacement": ("m", "displacement from the drawn position", joint, (J, 3)),
             "velocity": ("m/s", "velocity", joint, (J, 3)),
@@ -124,7 +97,7 @@ class HistoryRun:
     def frames(self) -> Iterator[Frame]:
         """March to the end; a step that finds no balance ends it, and is told in the record."""
         times = step_times(self.analysis.duration, self.analysis.time_step)
-        first = self.motion.start(self.rest.q, np.zeros(self.context.system.n), float(times[1]))
+        first = self.motion.start(self.rest.q, np.zeros(self.rest.scene.system.n), float(times[1]))
         try:
             for marched in march(self.motion, self._stepper(), first, times):
                 frame = self._frame(marched, times.size - 1)
@@ -149,8 +122,9 @@ class HistoryRun:
 
     def _values(self, step: Step) -> dict[str, Array]:
         """All quantities of a step, joints first: (J, 3) and (N,)."""
-        spread, state = self.context.system.freedom.spread, step.state
-        U = self.context.displacement(state.q, self.rest.acting)
+        scene, state = self.rest.scene, step.state
+        spread = scene.system.freedom.spread
+        U = scene.displacement(state.q, self.rest.acting)
         V, A = spread(state.v), spread(state.a)
         return {
             "displacement": U.T,
@@ -162,10 +136,10 @@ class HistoryRun:
 
     def _reaction(self, step: Step, U: Array, V: Array, A: Array) -> Array:
         """Forces of supports (3, J) [N]: what held joints need, inertia and damping included."""
-        motion, freedom = self.motion, self.context.system.freedom
+        motion = self.motion
         needed = motion.joint_forces(step, V, A)
         acting = self.rest.acting.force + motion.events.at(step.state.t, step.inside)
-        return freedom.held_part(needed - acting) - freedom.grounded(U)
+        return self.rest.scene.reaction(needed, acting, U)
 
     def _kept(self, values: dict[str, Array]) -> dict[str, Array]:
         store = self.analysis.store
@@ -190,7 +164,10 @@ class HistoryRun:
 
     def record(self, status_if_cut: str | None = None) -> Record:
         """Peaks, slack episodes and audit of the steps marched so far."""
-        faults = self.tally.faults(self.failure)
+        advice = "take shorter steps"
+        if self.choices.method == "newmark":
+            advice += ', or method = "energy-conserving"'
+        faults = self.tally.faults(self.failure, advice)
         status = status_if_cut or ("failed" if faults else "complete")
         if self.failure:
             status = "failed"
@@ -201,9 +178,12 @@ class HistoryRun:
             outcome=outcome(self, faults, status),
             acting=self.acting,
             settings=self.settings,
-            fields=self.tally.fields() | self._names_stored(),
+            fields=self.rest.scene.present
+            | self.tally.fields()
+            | self._names_stored()
+            | piece_names(self.rest.scene),
             audit_lines=audit_lines(self),
-            warnings=warnings(self),
+            warnings=(*self.said, *warnings(self)),
             sources=(SOURCES[self.choices.method],),
             wall_time=time.perf_counter() - self.began,
         )
@@ -211,34 +191,30 @@ class HistoryRun:
 
 def start_history(context: Context, analysis: History) -> HistoryRun:
     """Everything a history needs before its first step."""
-    rest = _rest(context, analysis)
-    choices = Choices.of(context, analysis)
-    system = context.system
-    springs = context.springs(rest.acting)
+    loading = analysis.loads[0] if analysis.loads is not None else None
+    model, changed = context, changes(context, analysis.change)
+    context, rest, said = begin(context, analysis.start, analysis.change, loading, analysis.pieces)
+    if rest.scene.pieces is not None and analysis.store.members is not None:
+        kept = finer_members(model, context, analysis.store.members)
+        analysis = replace(analysis, store=replace(analysis.store, members=kept))
+    scene = rest.scene
+    choices = Choices.of(scene, analysis)
     small = analysis.geometry == "small"
-    pulses = [context.parts.events[name] for name in analysis.events]
-    potential = context.potential(rest.acting, small)
+    potential = scene.potential(rest.acting, small)
     look = potential.look(rest.q)
+    pulses = [context.parts.events[name] for name in analysis.events]
+    damped = choices.rayleigh.stiffness_part
     motion = Motion(
-        system=system,
-        springs=springs,
-        held=context.held(rest.acting),
+        system=scene.system,
+        springs=potential.springs,
+        held=potential.held,
         dead=potential.force,
-        events=event_forces(pulses, system.structure.joints),
-        joint_mass=Product(system.joint_mass(rest.acting.mass, choices.lumped)),
+        events=event_forces(pulses, scene.structure.joints),
+        joint_mass=Product(scene.system.joint_mass(rest.acting, choices.lumped)),
         rayleigh=choices.rayleigh,
-        damper_blocks=damper_blocks(
-            springs, look.stretch, look.axial, choices.rayleigh.stiffness_part, small
-        ),
+        damper_blocks=damper_blocks(potential.springs, look.stretch, look.axial, damped, small),
         small=small,
     )
-    return HistoryRun(context, analysis, rest, choices, motion, Tally(motion))
-
-
-def _rest(context: Context, analysis: History) -> Rest:
-    """State at the start, with the loads of the history: its own, else its start state's."""
-    rest = context.start(analysis.start)
-    if analysis.loads is None:
-        return rest
-    loading: Loading = analysis.loads[0]
-    return replace(rest, loading=loading, acting=context.acting(loading))
+    return HistoryRun(
+        context, analysis, rest, choices, motion, Tally(motion, scene, rest.acting), said, changed
+    )

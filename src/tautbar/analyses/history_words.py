@@ -2,42 +2,26 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
-
 import numpy as np
 
-from tautbar.analyses.words import chosen, listed, quantity
+from tautbar.analyses.history_facts import Facts
+from tautbar.analyses.words import chosen, quantity
 from tautbar.model.parts import AXES
 
-if TYPE_CHECKING:
-    from tautbar.analyses.history import HistoryRun
 
-FEW_STEPS = (
-    10  # in a pulse: a half-sine sampled by 10 steps has its impulse to 1 %, common practice, no source
-)
-
-
-def outcome(run: HistoryRun, faults: list[str], status: str) -> str:
+def outcome(run: Facts, faults: list[str], status: str) -> str:
     """The answer, failures first."""
-    lines = [f"NOT A RESULT: {fault}{_advice(run)}" for fault in faults]
+    lines = [f"NOT A RESULT: {fault}" for fault in faults]
     if status == "interrupted":
         lines.append(f"interrupted at {run.tally.time:.6g} s of {run.duration:.6g} s")
     return "\n".join([*lines, *_peaks(run), *_slack(run)])
 
 
-def _advice(run: HistoryRun) -> str:
-    if run.failure:
-        return ""
-    if run.choices.method == "newmark":
-        return '; take shorter steps, or method = "energy-conserving"'
-    return "; take shorter steps"
-
-
-def _largest_displacement(run: HistoryRun) -> tuple[float, int, int, float] | None:
+def largest_displacement(run: Facts) -> tuple[float, int, int, float] | None:
     """Size [m], joint, axis and time [s] of the largest displacement component; None where nothing moves."""
     u = run.tally.peaks["displacement"]
     size = np.maximum(np.abs(u.low), np.abs(u.high))
-    if not size.size or not np.nanmax(size) > 0:
+    if not np.nan_to_num(size).max(initial=0.0) > 0:
         return None
     joint, axis = (int(i) for i in np.unravel_index(int(np.nanargmax(size)), size.shape))
     upward = abs(u.high[joint, axis]) >= abs(u.low[joint, axis])
@@ -45,16 +29,16 @@ def _largest_displacement(run: HistoryRun) -> tuple[float, int, int, float] | No
     return float(size[joint, axis]), joint, axis, float(time)
 
 
-def _peaks(run: HistoryRun) -> list[str]:
+def _peaks(run: Facts) -> list[str]:
     f = run.tally.peaks["axial_force"]
     lines = []
-    largest = _largest_displacement(run)
+    largest = largest_displacement(run)
     if largest:
         size, joint, axis, time = largest
         name = run.context.joint_names[joint]
         lines.append(f"largest displacement {quantity(size, 'm')} at {name} in {AXES[axis]} at {time:.6g} s")
     for extreme, word in ((f.high, "tension"), (-f.low, "compression")):
-        if extreme.size and np.nanmax(extreme) > 0:
+        if np.nan_to_num(extreme).max(initial=0.0) > 0:
             m = int(np.nanargmax(extreme))
             when = f.high_time[m] if word == "tension" else f.low_time[m]
             name = run.context.member_names[m]
@@ -62,8 +46,8 @@ def _peaks(run: HistoryRun) -> list[str]:
     return lines
 
 
-def _slack(run: HistoryRun) -> list[str]:
-    if not run.context.system.structure.can_slack.any():
+def _slack(run: Facts) -> list[str]:
+    if not run.rest.scene.structure.can_slack.any():
         return []
     episodes = run.tally.slack.episodes()
     if not episodes:
@@ -80,12 +64,13 @@ def _slack(run: HistoryRun) -> list[str]:
         hardest = max(snatched, key=lambda e: e[3])
         lines.append(
             f"hardest snatch {quantity(hardest[3], 'N')} in {run.context.member_names[hardest[0]]}, "
-            f"taut again at {hardest[2]:.6g} s; {len(snatched)} snatches in all"
+            f"taut again at {hardest[2]:.6g} s, greatest at {hardest[4]:.6g} s; "
+            f"{len(snatched)} snatches in all"
         )
     return lines
 
 
-def audit_lines(run: HistoryRun) -> tuple[str, ...]:
+def audit_lines(run: Facts) -> tuple[str, ...]:
     """Evidence: the ledger in joules, and how hard the steps were."""
     t = run.tally
 
@@ -96,83 +81,33 @@ def audit_lines(run: HistoryRun) -> tuple[str, ...]:
     lines = [
         f"energy ledger: {t.left_over:.1e} left over of {joules(t.turned_over)} turned over",
         f"events put in {joules(t.event_work)}; damping took {joules(t.damped)}"
-        + (caught if run.context.system.structure.can_slack.any() else ""),
-        f"{t.steps} steps, {t.iterations} iterations ({run.choices.method}, {run.context.system.solver.name})"
+        + (caught if run.rest.scene.structure.can_slack.any() else ""),
+        f"{t.steps} steps, landing on the corners of events, {t.iterations} iterations "
+        f"({run.choices.method}, {run.rest.scene.system.solver.name})"
         + (f", halved up to {t.halvings} times" if t.halvings else ""),
     ]
+    lines.append(_shape(run))
     if run.analysis.damping is not None:
-        parts = run.choices.rayleigh
-        lines.append(
-            f"Rayleigh damping: mass part {parts.mass_part:.3g} 1/s"
-            + ("" if run.choices.mass_part else " (left out: something can go slack or move freely)")
-            + f", stiffness part {parts.stiffness_part:.3g} s, against the tangent at the start"
-        )
+        lines.append(_damping(run))
     return tuple(lines)
 
 
-def warnings(run: HistoryRun) -> tuple[str, ...]:
-    """What holds, but should be known."""
-    return tuple(
-        w for w in (_snaps(run), _ringing(run), *_pulse_steps(run), _late_peak(run), _cold(run)) if w
-    )
+def _shape(run: Facts) -> str:
+    t = run.tally
+    move = f"greatest move {100 * t.move / run.rest.scene.structure.size:.2g} % of the model's size"
+    if t.turned_member < 0:
+        return move
+    name = run.context.member_names[t.turned_member]
+    return f"greatest turn of a bar or strut {np.rad2deg(t.turn):.2g} degrees ({name}); {move}"
 
 
-def _snaps(run: HistoryRun) -> str:
-    """An undamped snatch has no peak to compute: say so, and what viscosity would give it one."""
-    s = run.context.system.structure
-    snapped = sorted({e[0] for e in run.tally.slack.episodes() if np.isfinite(e[2]) and s.tau[e[0]] == 0.0})
-    if not snapped:
-        return ""
-    transit = (s.L0 * np.sqrt(s.m / s.EA))[snapped]
-    transit = transit[transit > 0]
-    hint = ""
-    if transit.size:
-        hint = f", between {quantity(0.05 * transit.max(), 's')} and {quantity(transit.min(), 's')} here"
+def _damping(run: Facts) -> str:
+    """The two parts, and the damping ratio that they give at the frequencies asked for."""
+    a0, a1 = run.choices.rayleigh
+    omega = 2 * np.pi * np.array(run.analysis.damping.at if run.analysis.damping else ())
+    gives = ", ".join(f"{100 * (a0 / (2 * w) + a1 * w / 2):.2g} % at {w / (2 * np.pi):.3g} Hz" for w in omega)
+    left_out = "" if run.choices.mass_part else " (left out: something can go slack or move freely)"
     return (
-        f"{chosen(run.context.member_names, snapped, 4)} snapped taut without viscosity: the peak of such "
-        "a snatch is not a determined number. Give the section a retardation_time of 0.05 to 1 of the time "
-        f"a wave takes along one piece, L0 sqrt(m/EA){hint}"
+        f"Rayleigh damping gives {gives}: mass part {a0:.3g} 1/s{left_out}, stiffness part {a1:.3g} s, "
+        "against the tangent at the start"
     )
-
-
-def _ringing(run: HistoryRun) -> str:
-    peak = np.nanmax(
-        np.abs([run.tally.peaks["axial_force"].high, run.tally.peaks["axial_force"].low]), initial=0.0
-    )
-    if run.tally.ringing <= 0.1 * peak:
-        return ""
-    return (
-        f"force at the end of a step is up to {quantity(run.tally.ringing, 'N')} off its mean over the step: "
-        "stress waves or snaps shorter than the step are not resolved, and peaks of force uncertain by that"
-    )
-
-
-def _pulse_steps(run: HistoryRun) -> list[str]:
-    step = run.analysis.time_step
-    pulses = [run.context.parts.events[name] for name in run.analysis.events]
-    short = [p.name for p in pulses if p.shape != "table" and p.duration < FEW_STEPS * step]
-    if not short:
-        return []
-    least = min(p.duration for p in pulses if p.name in short)
-    return [
-        f"{listed(short)} lasts fewer than {FEW_STEPS} steps; "
-        f"a time_step of {quantity(least / FEW_STEPS, 's')} would do"
-    ]
-
-
-def _late_peak(run: HistoryRun) -> str:
-    """A record that ends on its peak may not hold the peak."""
-    largest = _largest_displacement(run)
-    if largest is None or largest[3] < 0.98 * run.duration:
-        return ""
-    when = largest[3]
-    return (
-        f"the largest displacement comes at the end of the record ({when:.6g} s): "
-        "a longer duration may show a larger one"
-    )
-
-
-def _cold(run: HistoryRun) -> str:
-    if run.analysis.start is not None or not run.motion.dead.any():
-        return ""
-    return "the history starts from the drawing with its loads put on at once, not from rest under them"

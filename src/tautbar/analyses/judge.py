@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
-from tautbar.mechanics.structure import TIE
+from tautbar.mechanics.members import firmly_taut
+from tautbar.mechanics.turn import FOLDED, greatest_turn
 from tautbar.solvers.equilibrium import Descent
 from tautbar.solvers.potential import Look, Potential
 from tautbar.solvers.stability import (
@@ -16,19 +17,21 @@ from tautbar.solvers.stability import (
     Neighbour,
     Pivots,
     count_pivots,
+    falls_away,
     leave_saddle,
     probe_zero_pivots,
+    softest,
 )
 
 Array = NDArray[np.float64]
-FOLDED = np.deg2rad(30.0)
 
 
 @dataclass(frozen=True)
 class Verdict:
     """What the audit of one static state found.
 
-    ``fault`` is empty for a state that holds, else one of "not converged", "unstable", "folded".
+    ``fault`` is empty for a state that holds, else one of "not converged", "unstable", "folded",
+    "no steady contact", "load on nothing", "unbalanced", "snapped".
     """
 
     look: Look
@@ -43,6 +46,8 @@ class Verdict:
     free: tuple[FreeDirection, ...] = ()
     left_saddle: float | None = None  # m moved to leave a saddle for this state
     neighbours: tuple[Neighbour, ...] = ()
+    snapped_at: float | None = None  # share of the load at which the structure snaps through
+    gives_way: Array | None = None  # (n,) direction of least stiffness of an unstable state
 
     @property
     def holds(self) -> bool:
@@ -56,6 +61,7 @@ def judge(potential: Potential, descent: Descent, tolerance: float, folding: boo
     pivots = count_pivots(potential, descent.look)
     left: float | None = None
     neighbours: list[Neighbour] = []
+    falls = False  # pivots that ties at their length make positive hold no side that slackens them
     if pivots.negative or pivots.one_sided:
         neighbours = leave_saddle(potential, descent.look, tolerance)
         size = potential.system.structure.size
@@ -63,12 +69,18 @@ def judge(potential: Potential, descent: Descent, tolerance: float, folding: boo
         if near:
             descent, left = near[0].descent.after(descent.factorisations), near[0].move
             pivots = count_pivots(potential, descent.look)
-    fault = "unstable" if pivots.negative else ""
+        falls = not near and falls_away(potential, descent.look)
+    fault = "unstable" if pivots.negative or falls else ""
+    gives_way = None
+    if fault:
+        firm = firmly_taut(potential.springs, descent.look.stretch.e)
+        gives_way = softest(potential, potential.curvature(descent.look, firm))
     free: list[FreeDirection] = []
     if pivots.zero and not fault:
         free = probe_zero_pivots(potential, descent.look, pivots.zero, tolerance)
         fault = "unstable" if any(f.nature == "unstable" for f in free) else ""
-    return _verdict(potential, descent, fault, pivots, folding, tuple(free), left, tuple(neighbours))
+    found = _verdict(potential, descent, fault, pivots, folding, tuple(free), left, tuple(neighbours))
+    return replace(found, gives_way=gives_way)
 
 
 def _verdict(
@@ -82,7 +94,7 @@ def _verdict(
     neighbours: tuple[Neighbour, ...] = (),
 ) -> Verdict:
     look, system = descent.look, potential.system
-    turn, member = _greatest_turn(potential, look)
+    turn, member = greatest_turn(system.structure, look.stretch.n)
     if not fault and turn > FOLDED and not folding:
         fault = "folded"
     return Verdict(
@@ -99,16 +111,3 @@ def _verdict(
         left_saddle=left,
         neighbours=neighbours,
     )
-
-
-def _greatest_turn(potential: Potential, look: Look) -> tuple[float, int]:
-    """Greatest angle [rad] of a bar or strut from its drawn direction, and that member (-1: none)."""
-    s = potential.system.structure
-    stiff = np.flatnonzero(s.kind != TIE)
-    if not stiff.size:
-        return 0.0, -1
-    drawn, now = s.r0[:, stiff] / s.length[stiff], look.stretch.n[:, stiff]
-    across = np.cross(drawn.T, now.T)
-    angle = np.arctan2(np.sqrt((across * across).sum(axis=1)), (drawn * now).sum(axis=0))
-    worst = int(angle.argmax())
-    return float(angle[worst]), int(stiff[worst])

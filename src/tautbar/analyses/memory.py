@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
+from difflib import get_close_matches
+from numbers import Real
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,6 +20,47 @@ from tautbar.records.fields import Field, Record
 from tautbar.records.frames import ENERGY, ENERGY_NAMES
 
 Array = NDArray[np.generic]
+
+
+Rule = tuple[str, Callable[[Any], bool]]  # what is wanted, in words; whether a value is that
+
+
+def _one_of(*words: str) -> Rule:
+    return " or ".join(f'"{w}"' for w in words), lambda v: v in words
+
+
+def _above(least: float) -> Rule:
+    return f"a number above {least:g}", lambda v: _is_number(v) and v > least
+
+
+def _is_number(value: object) -> bool:
+    return isinstance(value, Real) and not isinstance(value, bool)
+
+
+_WHOLE: Rule = ("a whole number above 0", lambda v: isinstance(v, int) and not isinstance(v, bool) and v > 0)
+_GEOMETRY = _one_of("large", "small")
+STATIC_SETTINGS: Mapping[str, Rule] = {
+    "geometry": _GEOMETRY,
+    "steps": _WHOLE,
+    "tolerance": ("a number between 0 and 1", lambda v: _is_number(v) and 0 < v < 1),
+    "folding": ("true or false", lambda v: isinstance(v, bool)),
+    "pieces": _WHOLE,
+}
+MODES_SETTINGS: Mapping[str, Rule] = {
+    "count": _WHOLE,
+    "up_to": _above(0),
+    "mass": _one_of("consistent", "lumped"),
+    "pieces": _WHOLE,
+}
+HISTORY_SETTINGS: Mapping[str, Rule] = {
+    "method": _one_of("newmark", "energy-conserving"),
+    "beta": _above(0),
+    "gamma": ("a number of at least 0.5", lambda v: _is_number(v) and v >= 0.5),
+    "snap_loss": _one_of("capture", "none"),
+    "geometry": _GEOMETRY,
+    "mass": _one_of("consistent", "lumped"),
+    "pieces": _WHOLE,
+}
 
 
 @dataclass(frozen=True)
@@ -34,11 +78,11 @@ class Answer:
 
     def member(self, path: str, name: str) -> Array:
         """Values of one member: those of ``path`` with the member picked from its axis."""
-        return self._pick(path, "member", self.context.member_names.index(name))
+        return self._pick(path, "member", _place("member", name, self.context.member_names))
 
     def joint(self, path: str, name: str) -> Array:
         """Values of one joint: those of ``path`` with the joint picked from its axis."""
-        return self._pick(path, "joint", self.context.joint_names.index(name))
+        return self._pick(path, "joint", _place("joint", name, self.context.joint_names))
 
     def axial_force(self, name: str) -> Array:
         """Axial force of a member [N], over loadings or times."""
@@ -51,6 +95,13 @@ class Answer:
     def _pick(self, path: str, axis: str, at: int) -> Array:
         field = self.record.fields[path]
         return np.asarray(np.take(field.values, at, axis=field.axes.index(axis)))
+
+
+def _place(what: str, name: str, names: Sequence[str]) -> int:
+    if name not in names:
+        near = get_close_matches(name, names, 1, 0.6)
+        raise InputError(f"no {what} is called {name!r}" + (f"; did you mean {near[0]!r}?" if near else ""))
+    return names.index(name)
 
 
 def solve_static(
@@ -76,7 +127,7 @@ def solve_static(
     """
     loadings = _loadings(model.parts, loads)
     name = loads if isinstance(loads, str) else loadings[0].name
-    return _do(model, Static(name, loads=loadings, **settings), start)  # type: ignore[arg-type]
+    return _do(model, Static(name, loads=loadings, **_checked(settings, STATIC_SETTINGS)), start)
 
 
 def find_modes(model: Readable, state: Answer | None = None, **settings: object) -> Answer:
@@ -89,7 +140,7 @@ def find_modes(model: Readable, state: Answer | None = None, **settings: object)
     AnalysisFailed
         The state is unstable, or the modes are not proven complete.
     """
-    return _do(model, Modes("modes", **settings), state)  # type: ignore[arg-type]
+    return _do(model, Modes("modes", **_checked(settings, MODES_SETTINGS)), state)
 
 
 def solve_history(
@@ -115,6 +166,7 @@ def solve_history(
     InputError
         No such event or loading.
     """
+    _checked({"duration": duration, "time_step": time_step}, {"duration": _above(0), "time_step": _above(0)})
     unknown = [e for e in events if e not in model.parts.events]
     if unknown:
         raise InputError(f"no event is called {unknown[0]!r}; there are: {', '.join(model.parts.events)}")
@@ -127,9 +179,22 @@ def solve_history(
         loads=loadings,
         damping=damping,
         precision="double",
-        **settings,  # type: ignore[arg-type]
+        **_checked(settings, HISTORY_SETTINGS),
     )
     return _do(model, analysis, state)
+
+
+def _checked(settings: Mapping[str, object], known: Mapping[str, Rule]) -> dict[str, Any]:
+    """The settings, if each is known and sound."""
+    for key, value in settings.items():
+        if key not in known:
+            near = get_close_matches(key, known, 1, 0.6)
+            hint = f"did you mean {near[0]}?" if near else f"there are: {', '.join(known)}"
+            raise InputError(f"no setting is called {key!r}; {hint}")
+        wanted, sound = known[key]
+        if value is not None and not sound(value):
+            raise InputError(f"{key} = {value!r}: {wanted} is wanted")
+    return dict(settings)
 
 
 def _loadings(parts: Parts, loads: str | Mapping[str, float]) -> tuple[Loading, ...]:
@@ -152,7 +217,7 @@ def _do(model: Readable, analysis: Analysis, start: Answer | None) -> Answer:
         job.context.states.update(start.context.states)
         analysis = replace(analysis, start=StartFrom(start.record.name))
     if getattr(analysis, "geometry", "large") == "small":
-        found = mechanisms(job.context)
+        found = mechanisms(job.context.first_scene())
         if found:
             raise ModelError([model.mistake((), what, hint) for what, hint in found])
     done = job.do(analysis)

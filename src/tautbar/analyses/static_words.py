@@ -2,16 +2,15 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
-
 import numpy as np
+from numpy.typing import NDArray
 
 from tautbar.analyses.context import Context
+from tautbar.analyses.solved import Solved
+from tautbar.analyses.strength import Strength
 from tautbar.analyses.words import chosen, direction, listed, quantity
+from tautbar.mechanics.structure import HANGING, TIE
 from tautbar.model.parts import Static
-
-if TYPE_CHECKING:
-    from tautbar.analyses.static import Solved
 
 MOST_LOADINGS = 12
 
@@ -31,21 +30,56 @@ def outcome(context: Context, analysis: Static, solved: list[Solved]) -> str:
 
 
 def _answer(context: Context, s: Solved) -> str:
-    U, N = s.displacement, s.verdict.look.axial
-    size = np.sqrt((U * U).sum(axis=0))
-    parts = []
-    if size.size and size.max() > 0:
-        j = int(size.argmax())
-        parts.append(f"largest displacement {quantity(size[j], 'm')} at {context.joint_names[j]}")
-    for sign, word in ((1, "tension"), (-1, "compression")):
-        if N.size and (sign * N).max() > 0:
-            m = int((sign * N).argmax())
-            parts.append(f"greatest {word} {quantity(abs(N[m]), 'N')} in {context.member_names[m]}")
+    parts = [_displacement(context, s), *_forces(context, s), *_supports(context, s)]
     if s.slack.any():
         parts.append(f"slack: {chosen(context.member_names, s.slack)}")
-    elif context.system.structure.can_slack.any():
+    elif s.scene.structure.can_slack.any():
         parts.append("no member is slack")
-    return "; ".join(parts) or "nothing moves and nothing is loaded"
+    parts.append(_least(context, s))
+    return "; ".join(p for p in parts if p) or "nothing moves and nothing is loaded"
+
+
+def _displacement(context: Context, s: Solved) -> str:
+    size = np.sqrt((s.displacement * s.displacement).sum(axis=0))
+    if not size.size or not size.max() > 0:
+        return ""
+    j = int(size.argmax())
+    way = direction(s.displacement[:, j])
+    return f"largest displacement {quantity(size[j], 'm')} at {context.joint_names[j]} in {way}"
+
+
+def _forces(context: Context, s: Solved) -> list[str]:
+    N, out = s.verdict.look.axial, []
+    for sign, word in ((1, "tension"), (-1, "compression")):
+        if N.size and (sign * N).max() > 1e-12 * np.abs(N).max():
+            m = int((sign * N).argmax())
+            out.append(f"greatest {word} {quantity(abs(N[m]), 'N')} in {context.member_names[m]}")
+    return out
+
+
+def _least(context: Context, s: Solved) -> str:
+    """The least tension of the ties and ropes that are taut: what is nearest to going slack."""
+    structure, N = s.scene.structure, s.verdict.look.axial
+    pulls = structure.present & ((structure.kind == TIE) | (structure.kind == HANGING)) & ~s.slack
+    if pulls.sum() < 2:
+        return ""
+    m = int(np.where(pulls, N, np.inf).argmin())
+    return f"least tension {quantity(N[m], 'N')} in {context.member_names[m]}"
+
+
+def _supports(context: Context, s: Solved) -> list[str]:
+    """The largest reaction, and the largest one that holds the structure down."""
+    size = np.sqrt((s.reaction * s.reaction).sum(axis=0))
+    if not size.size or not size.max() > 0:
+        return []
+    j = int(size.argmax())
+    way = direction(s.reaction[:, j])
+    out = [f"largest reaction {quantity(size[j], 'N')} at {context.joint_names[j]} in {way}"]
+    down = -s.reaction[context.parts.up]
+    j = int(down.argmax())
+    if down[j] > 1e-6 * size.max():
+        out.append(f"greatest uplift {quantity(down[j], 'N')} at {context.joint_names[j]}")
+    return out
 
 
 def _governing(context: Context, good: list[Solved]) -> str:
@@ -61,13 +95,20 @@ def _governing(context: Context, good: list[Solved]) -> str:
 
 
 def _fault(context: Context, s: Solved) -> str:
-    return {"not converged": _unconverged, "unstable": _unstable, "folded": _folded}[s.verdict.fault](
-        context, s
-    )
+    say = {
+        "not converged": _unconverged,
+        "unstable": _unstable,
+        "folded": _folded,
+        "no steady contact": _contact,
+        "load on nothing": _load_on_nothing,
+        "unbalanced": _unbalanced,
+        "snapped": _snapped,
+    }
+    return say[s.verdict.fault](context, s)
 
 
 def _unconverged(context: Context, s: Solved) -> str:
-    force = context.system.freedom.spread(s.verdict.look.residual)
+    force = s.scene.system.freedom.spread(s.verdict.look.residual)
     size = np.sqrt((force * force).sum(axis=0))
     joint = int(size.argmax())
     return (
@@ -77,14 +118,45 @@ def _unconverged(context: Context, s: Solved) -> str:
     )
 
 
+def _load_on_nothing(context: Context, s: Solved) -> str:
+    names = listed(s.scene.loads_on_nothing(s.acting))
+    return f"no member is there to carry the load at {names}: it would fall"
+
+
+def _unbalanced(context: Context, s: Solved) -> str:
+    return (
+        f"reactions and loads do not add up: they differ by {100 * s.reaction_sum_error:.2g} % of the largest"
+    )
+
+
+def _snapped(context: Context, s: Solved) -> str:
+    v = s.verdict
+    return (
+        f"the structure snaps through at {v.snapped_at:.4g} of the way to this loading, into a state up to "
+        f"{quantity(v.move * s.scene.structure.size, 'm')} from the drawing; an equilibrium-path shows how. "
+        'If it may snap, set folding = "allowed"'
+    )
+
+
+def _contact(context: Context, s: Solved) -> str:
+    return (
+        "supports that only push find no steady state: they lift off and set down in turn. "
+        "Look for a support near its lifting load, or hold it down"
+    )
+
+
 def _unstable(context: Context, s: Solved) -> str:
     v = s.verdict
-    if v.pivots.negative == 0:
-        joint, way = context.name_direction(next(f.vector for f in v.free if f.nature == "unstable"))
+    if v.gives_way is None:
+        joint, way = s.scene.name_direction(next(f.vector for f in v.free if f.nature == "unstable"))
         return f"the equilibrium is unstable: joint {joint} gives way in {direction(way)}"
-    text = f"the equilibrium is unstable ({v.pivots.negative} negative pivots)"
+    why = (
+        f"{v.pivots.negative} negative pivots" if v.pivots.negative else "ties at their length do not hold it"
+    )
+    joint, way = s.scene.name_direction(v.gives_way)
+    text = f"the equilibrium is unstable ({why}): joint {joint} gives way in {direction(way)}"
     for n in v.neighbours:
-        joint, way = context.name_direction(n.descent.q - v.look.q)
+        joint, way = s.scene.name_direction(n.descent.q - v.look.q)
         text += (
             f"; a stable one lies {quantity(n.move, 'm')} away (joint {joint} moves in {direction(way)}), "
             f"{quantity(n.energy_below, 'J')} lower"
@@ -112,7 +184,7 @@ def audit_lines(context: Context, analysis: Static, solved: list[Solved]) -> tup
     ]
     work = sum(s.verdict.factorisations for s in solved)
     roads = listed(sorted({s.verdict.road for s in solved}))
-    return (*lines, f"{work} factorisations ({roads}, {context.system.solver.name})")
+    return (*lines, f"{work} factorisations ({roads}, {solved[0].scene.system.solver.name})")
 
 
 def _stability_line(context: Context, solved: list[Solved]) -> str:
@@ -147,18 +219,17 @@ def warnings(context: Context, solved: list[Solved]) -> tuple[str, ...]:
                 f"{name}: the balance reached first was unstable; the structure gives way by "
                 f"{quantity(v.left_saddle, 'm')} to the stable one reported"
             )
-        found += [_free_words(context, name, f.vector, f.nature) for f in v.free]
+        found += [_free_words(s, f.vector, f.nature) for f in v.free]
         if v.move > 0.1:
             found.append(f"{name}: joints move by {100 * v.move:.0f} % of the model's size")
+        strength = Strength.of(s.scene)
+        found += strength.said(context.member_names, s.verdict.look.axial, s.verdict.look.axial, f": {name}")
     return tuple(dict.fromkeys(found))
 
 
-def _free_words(context: Context, loading: str, vector: np.ndarray, nature: str) -> str:
-    joint, way = context.name_direction(vector)
+def _free_words(s: Solved, vector: NDArray[np.float64], nature: str) -> str:
+    joint, way = s.scene.name_direction(vector)
+    what = f"{s.loading.name}: joint {joint} is {{}} in {direction(way)}"
     if nature == "loose":
-        return (
-            f"{loading}: joint {joint} is loose in {direction(way)}: nothing holds it, and nothing pulls it"
-        )
-    return (
-        f"{loading}: joint {joint} is held in {direction(way)} only once it has moved (no stiffness at rest)"
-    )
+        return what.format("loose") + ": nothing holds it, and nothing pulls it"
+    return what.format("held") + " only once it has moved"
