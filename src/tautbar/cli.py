@@ -31,6 +31,9 @@ maker's data govern. Bending, eccentric joints, connections, fatigue, corrosion,
 only in a wind tunnel are not modelled. Nobody stands under or near a structure because of these numbers."""
 
 
+_lost: list[str] = []  # why standard output could not be written, once it failed
+
+
 class Terminated(KeyboardInterrupt):
     """The signal SIGTERM; handled like Ctrl-C, so that what was finished is kept."""
 
@@ -73,15 +76,32 @@ def near(word: str, known: Iterable[str]) -> str:
 
 def main(arguments: Sequence[str] | None = None) -> int:
     """Do a command and return its exit code (docs/commands.md)."""
+    if sys.stderr is None:  # closed: nobody reads it, but a file opened next must not take its place
+        sys.stderr = open(os.devnull, "w", encoding="utf-8")  # noqa: SIM115
+    if sys.stdout is None:
+        tell(
+            "tautbar: standard output is closed, no answer could be shown; send it to /dev/null to run unseen"
+        )
+        return WRONG_INPUT
     for stream in (sys.stdout, sys.stderr):
         if hasattr(stream, "reconfigure"):
             stream.reconfigure(errors="backslashreplace")  # names may hold what the terminal cannot show
+    _lost.clear()
     try:
         options = parser().parse_args(arguments)
     except SystemExit as end:  # help, or arguments that cannot be used
-        return int(end.code or 0)
+        _write(sys.stdout, "")
+        return _unless_lost(int(end.code or 0))
     with terminable():
-        return answer(options)
+        return _unless_lost(answer(options))
+
+
+def _unless_lost(code: int) -> int:
+    """The exit code of a command, if all it said could be written."""
+    if not _lost:
+        return code
+    tell(f"tautbar: standard output cannot be written ({_lost[0]}); what was to stand there is lost")
+    return code or FAILED
 
 
 def answer(options: argparse.Namespace) -> int:
@@ -89,7 +109,7 @@ def answer(options: argparse.Namespace) -> int:
     try:
         code: int = options.does(options)
     except KeyboardInterrupt as signal_given:
-        tell("tautbar: stopped; what was finished is kept")
+        tell("; ".join(["tautbar: stopped", *getattr(signal_given, "__notes__", ())]))
         return TERMINATED if isinstance(signal_given, Terminated) else INTERRUPTED
     except Exception as error:
         if options.debug:
@@ -134,20 +154,25 @@ def terminable() -> Iterator[None]:
 
 def say(text: str) -> None:
     """Write a result."""
-    _write(sys.stdout, text)
+    _write(sys.stdout, text + "\n")
 
 
 def tell(text: str) -> None:
     """Write what is not a result."""
-    _write(sys.stderr, text)
+    _write(sys.stderr, text + "\n")
 
 
 def _write(stream: TextIO, text: str) -> None:
-    """Write a line at once; a reader that has gone ends the writing, not the command."""
+    """Write at once. Where that cannot be done the writing ends, not the command.
+
+    A reader that has gone is no fault; a standard output that fails is remembered in `_lost`.
+    """
     try:
-        stream.write(text + "\n")
+        stream.write(text)
         stream.flush()
-    except BrokenPipeError:
+    except OSError as wrong:
+        if stream is sys.stdout and not isinstance(wrong, BrokenPipeError):
+            _lost.append(wrong.strerror or str(wrong))
         nowhere = os.open(os.devnull, os.O_WRONLY)
         os.dup2(nowhere, stream.fileno())
         os.close(nowhere)
@@ -168,13 +193,34 @@ def check(options: argparse.Namespace) -> int:
 
 
 def run(options: argparse.Namespace) -> int:
-    """Do the analyses of a model."""
+    """Do the analyses of a model; when stopped, say what became of the results file."""
+    path = options.output or Path(options.model).with_suffix(".h5")
+    before = _version_of(path)
+    try:
+        return _run(options, path)
+    except KeyboardInterrupt as stop:
+        kept = _version_of(path) not in (None, before)
+        stop.add_note(
+            f"what was finished is in {path}" if kept else "nothing was finished, nothing was written"
+        )
+        raise
+
+
+def _version_of(path: Path) -> tuple[int, int] | None:
+    """What tells a file from one put in its place later."""
+    try:
+        status = path.stat()
+    except OSError:
+        return None
+    return status.st_ino, status.st_mtime_ns
+
+
+def _run(options: argparse.Namespace, path: Path) -> int:
     from tautbar.model.reading import read_model
 
     model = read_model(options.model)
     if not model.parts.analyses:
         raise InputError(f"{options.model}: there is nothing to run; the model has no [[analyses]]")
-    path = options.output or Path(options.model).with_suffix(".h5")
     from tautbar.progress import Progress, Silent
     from tautbar.run import run as run_model
     from tautbar.views.answers import answer_text
@@ -189,12 +235,9 @@ def run(options: argparse.Namespace) -> int:
     for warning in model.warnings:
         tell(f"warning: {warning}")
     choices = {"only": options.only, "overwrite": options.overwrite}
-    try:
-        run_model(model, path, **choices, progress=progress, on_record=on_record).close()
-    except KeyboardInterrupt:
-        if statuses:
-            tell(f"results so far: {path}")
-        raise
+    with run_model(model, path, **choices, progress=progress, on_record=on_record) as results:
+        for warning in results.warnings[len(model.warnings) :]:  # those that only arrays show
+            tell(f"warning: {warning}")
     tell(CARE)
     say(f"results: {path}")
     if not options.quiet:
@@ -305,12 +348,17 @@ def add_plot(commands: Any) -> None:
     command.add_argument("what", metavar="WHAT", nargs="?", help="plot; without it: the list of plots")
     output(command, "PNG, SVG or PDF file, by its ending (default: RESULT-NAME-WHAT.png)")
     command.add_argument("--joint", metavar="NAME", help="joint to draw")
-    command.add_argument("--member", metavar="NAME", help="member to draw")
+    command.add_argument("--direction", metavar="AXIS", help="x, y or z: component of a displacement")
+    command.add_argument("--member", metavar="NAME", help="member, group or rope to draw")
     command.add_argument("--quantity", metavar="NAME", help="quantity to draw, e.g. displacement")
     command.add_argument("--mode", metavar="NUMBER", type=int, help="mode, counted from 1")
     command.add_argument("--loading", metavar="NAME", help="loading of a static analysis")
     command.add_argument("--time", metavar="SECONDS", type=float, help="instant of a history")
+    command.add_argument("--at", metavar="POINT", help="point of a path: end, or limit point 1 and the like")
     command.add_argument("--scale", metavar="NUMBER", type=float, help="magnification of displacements")
+    command.add_argument(
+        "--view", metavar="VIEW", help='front, side, top, or azimuth and elevation in degrees: "30 20"'
+    )
 
 
 def output(command: Parser, text: str) -> None:
@@ -318,7 +366,9 @@ def output(command: Parser, text: str) -> None:
     command.add_argument("-o", "--output", metavar="FILE", type=Path, help=text)
 
 
-PLOT_CHOICES = ("joint", "member", "quantity", "mode", "loading", "time", "scale")
+PLOT_CHOICES = (
+    "joint", "direction", "member", "quantity", "mode", "loading", "time", "at", "scale", "view",
+)  # fmt: skip
 
 
 def plot_choices(options: argparse.Namespace) -> dict[str, Any]:

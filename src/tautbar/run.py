@@ -82,7 +82,7 @@ def run(
         tables=model.files,
         model_fields=job.model_fields,
         settings={"only": only},
-        warnings=model.warnings,
+        warnings=(*model.warnings, *job.warnings),
         program=f"tautbar {version('tautbar')}",
     )
     place = Path(model.folder or ".") / f"{model.name}.h5" if path is None else path

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import errno
 import os
+import tomllib
 from collections.abc import Iterator, Mapping
 from functools import cached_property
 from pathlib import Path
@@ -15,7 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tautbar.errors import InputError, ResultsError
-from tautbar.store.layout import FORMAT, FORMAT_VERSION, UnknownName, given_name, stored_name
+from tautbar.store.layout import DIRECTIONS, FORMAT, FORMAT_VERSION, UnknownName, given_name, stored_name
 from tautbar.store.result import Result, texts
 
 CACHE = 32 << 20  # bytes of chunks kept in memory for each dataset
@@ -83,6 +84,27 @@ class Results(Mapping[str, Result]):
             if group not in ("", member):
                 groups.setdefault(group, []).append(member)
         return MappingProxyType({group: tuple(members) for group, members in groups.items()})
+
+    @cached_property
+    def ropes(self) -> Mapping[str, tuple[str, ...]]:
+        """Names of the pieces of each rope that the model has in pieces: ties that hang on each other."""
+        place = {name: k for k, name in enumerate(self.members)}
+        ties = np.asarray(self.model("members/kind")) == "tension-only"
+        ropes = {}
+        for name, members in self.groups.items():
+            pieces = [place[member] for member in members]
+            chained = (self.ends[pieces[:-1], 1] == self.ends[pieces[1:], 0]).all() and len(pieces) > 1
+            numbered = members == tuple(f"{name}.{k}" for k in range(1, len(members) + 1))
+            if numbered and chained and ties[pieces].all():
+                ropes[name] = members
+        return MappingProxyType(ropes)
+
+    @cached_property
+    def up(self) -> int:
+        """The direction that is up: 0, 1 or 2 for x, y, z."""
+        words = tomllib.loads(self.model_text)
+        plane = str(words.get("plane", "xyz"))
+        return DIRECTIONS.index(str(words.get("up", plane[-1])))
 
     @cached_property
     def positions(self) -> NDArray[np.float64]:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from typing import TYPE_CHECKING, Any
 
 import h5py
@@ -44,9 +44,44 @@ class Result:
     def __contains__(self, path: object) -> bool:
         return isinstance(path, str) and isinstance(self.group.get(path), h5py.Dataset)
 
+    def __iter__(self) -> Iterator[str]:
+        """Paths of its datasets."""
+        return iter(self.paths())
+
+    def keys(self) -> tuple[str, ...]:
+        """Paths of its datasets, as of a mapping."""
+        return self.paths()
+
     def paths(self) -> tuple[str, ...]:
         """Paths of all datasets but the labels that analyses share."""
         return tuple(path for path in _walk(self.group) if path not in SHARED)
+
+    @property
+    def joints(self) -> tuple[str, ...]:
+        """Names of the joints of this analysis: those of the model, and those between pieces of ropes."""
+        return texts(self["joint_with_pieces"]) if "joint_with_pieces" in self else self.results.joints
+
+    @property
+    def members(self) -> tuple[str, ...]:
+        """Names of the members of this analysis: pieces where it cut ropes into pieces."""
+        return texts(self["member_with_pieces"]) if "member_with_pieces" in self else self.results.members
+
+    @property
+    def ropes(self) -> Mapping[str, tuple[str, ...]]:
+        """Names of the pieces of each rope in pieces, whether the model or the analysis cut it."""
+        pieces: dict[str, list[str]] = {}
+        for name in self.members if "member_with_pieces" in self else ():
+            rope = name.rpartition(".")[0]
+            if rope in self.results.members and name not in self.results.members:
+                pieces.setdefault(rope, []).append(name)
+        return {**self.results.ropes, **{rope: tuple(names) for rope, names in pieces.items()}}
+
+    def members_of(self, name: str) -> tuple[str, ...]:
+        """Names of the members of a group or the pieces of a rope; none where it is neither.
+
+        A rope in a group stands under its own name.
+        """
+        return self.ropes.get(name, ()) or self.results.groups.get(name, ())
 
     @property
     def kind(self) -> str:
@@ -117,11 +152,20 @@ class Result:
 
     def labels(self, path: str, axis: int) -> tuple[Any, ...]:
         """What the places along an axis of a dataset are called."""
+        if self[path].is_scale:  # the names themselves
+            return tuple(self.values(path).tolist())
         return tuple(np.asarray(read(self[path].dims[axis][0])).tolist())
 
     def axes(self, path: str) -> tuple[str, ...]:
-        """Names of the axes of a dataset; those of a part of the joints or members are called so too."""
-        return tuple(axis[0].name.rpartition("/")[2].removeprefix("stored_") for axis in self[path].dims)
+        """Names of the axes of a dataset.
+
+        Axes over a part of the joints or members, or over pieces of ropes too, are called "joint" and
+        "member" all the same.
+        """
+        dataset = self[path]
+        labels = [dataset] if dataset.is_scale else [axis[0] for axis in dataset.dims]
+        names = (label.name.rpartition("/")[2] for label in labels)
+        return tuple(name.removeprefix("stored_").removesuffix("_with_pieces") for name in names)
 
     def at(self, path: str, **places: str) -> Array:
         """Values of a dataset at a named place along one or more axes: ``at("shape", joint="C")``."""
@@ -137,6 +181,8 @@ class Result:
         labels = self.labels(path, axis)
         if name in labels:
             return labels.index(name)
+        if thing == "member" and (several := self.members_of(name)):
+            raise InputError(_is_several(name, several, name in self.ropes))
         if name in getattr(self.results, thing + "s", ()):
             raise InputError(f'{thing} "{name}" is in the model, but "{self.name}" did not store it')
         raise UnknownName(thing, name, map(str, labels))
@@ -172,6 +218,11 @@ class Result:
         (or ``joint`` and ``direction``), ``min``, ``time_of_min``, ``max``, ``time_of_max``.
         """
         known = self.group.get("peaks", {})
+        if not known and "envelope/max" in self:
+            raise InputError(
+                f'"{self.name}" is {self.kind} and has no peaks in time; its extremes over the loadings are '
+                'in values("envelope/min") and values("envelope/max"), one number a member'
+            )
         if quantity not in known or not isinstance(known[quantity], h5py.Group):
             raise UnknownName(
                 f'peaks in "{self.name}" of', quantity, (k for k in known if isinstance(known[k], h5py.Group))
@@ -187,12 +238,13 @@ class Result:
     def slack_episodes(self) -> Array:
         """When each tie was slack and how hard it snatched.
 
-        A structured array with the columns ``member``, ``start`` [s], ``end`` [s] and
-        ``snatch_force`` [N]; the last two are not a number where it was slack to the end.
+        A structured array with the columns ``member``, ``start`` [s], ``end`` [s], ``snatch_force`` [N]
+        and ``time_of_snatch`` [s]; the last three are not a number where it was slack to the end.
         """
-        names = np.array(self.results.members, dtype=str)
+        names = np.array(self.members, dtype=str)
         columns = {"member": names[self.values("slack/member")]}
-        return _table(columns | {name: self.values(f"slack/{name}") for name in SLACK_COLUMNS})
+        stored = (name for name in SLACK_COLUMNS if f"slack/{name}" in self)  # older files lack a time
+        return _table(columns | {name: self.values(f"slack/{name}") for name in stored})
 
     def _word(self, key: str) -> str:
         return str(self.group.attrs[key])
@@ -200,7 +252,14 @@ class Result:
 
 SHARED = ("joint", "member", "direction", "end")
 PEAK_COLUMNS = ("min", "time_of_min", "max", "time_of_max")
-SLACK_COLUMNS = ("start", "end", "snatch_force")
+SLACK_COLUMNS = ("start", "end", "snatch_force", "time_of_snatch")
+MOST_LISTED = 40  # members named in a message
+
+
+def _is_several(name: str, several: Sequence[str], rope: bool) -> str:
+    what = f"a rope in {len(several)} pieces" if rope else f"a group of {len(several)} members"
+    more = f" and {len(several) - MOST_LISTED} more" if len(several) > MOST_LISTED else ""
+    return f'"{name}" is {what}, not one member; name one of {", ".join(several[:MOST_LISTED])}{more}'
 
 
 def texts(stored: Any) -> tuple[str, ...]:

@@ -3,13 +3,11 @@
 from __future__ import annotations
 
 import textwrap
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from typing import Any, Protocol
 
-import numpy as np
-
 from tautbar.store import Result
-from tautbar.views.envelopes import envelope
+from tautbar.views.numbers import audit_numbers, numbers, plain
 
 WIDTH = 100  # columns
 MOST_ACTING = 8  # loadings named; the rest are counted
@@ -80,41 +78,19 @@ def _wrap(line: str, first: str, then: str) -> list[str]:
 
 
 def as_json(result: Result) -> dict[str, Any]:
-    """One analysis as plain data for scripts, SI units; what is not a number is None."""
-    data: dict[str, Any] = {
+    """One analysis as plain data for scripts, SI units named in the keys; what is not a number is None."""
+    return {
         "name": result.name,
         "kind": result.kind,
         "status": result.status,
         "outcome": result.outcome,
         "acting": list(result.acting),
-        "settings": _plain(result.settings),
-        "audit": _plain(result.audit),
+        "settings": plain(result.settings),
+        "audit": audit_numbers(result),
         "audit_lines": list(result.audit_lines),
         "warnings": list(result.warnings),
         "sources": list(result.sources),
         "measured_from": result.measured_from,
         "wall_time_s": result.wall_time,
+        **numbers(result),
     }
-    if "frequency" in result:
-        data["frequency_hz"] = _plain(result.values("frequency"))
-    if "axial_force" in result:
-        whole = envelope(result)
-        data["axial_force_n"] = {
-            member: {"least": _plain(low), "greatest": _plain(high)}
-            for member, low, high in zip(whole.members, whole.low, whole.high, strict=True)
-        }
-    if "slack/member" in result:
-        rows = result.slack_episodes
-        names = ("member", "start_s", "end_s", "snatch_force_n")
-        data["slack"] = [dict(zip(names, map(_plain, row), strict=True)) for row in rows.tolist()]
-    return data
-
-
-def _plain(value: Any) -> Any:
-    if isinstance(value, Mapping):
-        return {str(key): _plain(part) for key, part in value.items()}
-    if isinstance(value, np.ndarray | np.generic):
-        return _plain(value.tolist())
-    if isinstance(value, list | tuple):
-        return [_plain(part) for part in value]
-    return None if isinstance(value, float) and not np.isfinite(value) else value

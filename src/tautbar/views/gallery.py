@@ -14,62 +14,107 @@ from matplotlib.figure import Figure
 from tautbar.errors import InputError
 from tautbar.store import Result, Results
 from tautbar.store.layout import UnknownName
-from tautbar.views import envelopes, shapes, traces
+from tautbar.views import envelopes, mechanism, paths, ropes, sensitivity, shapes, slackness, traces
+from tautbar.views.drawing import Size
 from tautbar.views.style import TENSION, styled
 
-Size = tuple[float, float]  # inches
+
+def _plain(result: Result, choices: Mapping[str, Any]) -> Size:
+    return (7.2, 5.2)
 
 
 @dataclass(frozen=True, slots=True)
 class Plot:
-    """One plot: a function that takes an Axes and a Result, and what it can be drawn from."""
+    """One plot: a function that takes an Axes and a Result, and what it can be drawn from.
+
+    A plot with two ``panels`` (their shares of the height) is given the lower one as ``below``.
+    """
 
     draw: Callable[..., Any]
     shows: str
     needs: tuple[str, ...] = ()  # datasets
     choices: tuple[str, ...] = ()
-    size: Callable[[Result], Size] = lambda result: (7.2, 5.2)
+    size: Callable[[Result, Mapping[str, Any]], Size] = _plain
+    panels: tuple[float, ...] = (1.0,)
+    fits: Callable[[Result], bool] = lambda result: True
 
     def suits(self, result: Result) -> bool:
         """Whether the result holds what it needs."""
-        return all(path in result for path in self.needs)
+        return all(path in result for path in self.needs) and self.fits(result)
 
 
-def _by_members(result: Result) -> Size:
-    rows = min(result["axial_force"].shape[1], envelopes.MOST_ROWS)
+def _by_bars(result: Result, choices: Mapping[str, Any]) -> Size:
+    rows = min(len(envelopes.bars(result, choices.get("member"))), envelopes.MOST_ROWS)
     return (7.2, 1.6 + 0.17 * max(rows, 8))
 
 
-def _by_slack_members(result: Result) -> Size:
-    rows = min(len(set(result.values("slack/member").tolist())), envelopes.MOST_ROWS)
-    return (7.2, 1.6 + 0.22 * max(rows, 4))
+def _by_spells(result: Result, choices: Mapping[str, Any]) -> Size:
+    rows = min(len(slackness.spells(result, choices.get("member"))), slackness.MOST_ROWS)
+    return (7.2, 1.8 + 0.22 * max(rows, 4))
 
 
 PLOTS: Mapping[str, Plot] = {
     "structure": Plot(
-        shapes.structure, "joints and members as the model puts them", size=lambda r: (7.2, 7.2)
+        shapes.structure,
+        "joints and members as the model puts them",
+        choices=("view",),
+        size=shapes.page,
     ),
     "displaced": Plot(
         shapes.displaced,
         "displaced shape, coloured by axial force",
         ("displacement", "axial_force"),
-        ("loading", "time", "scale"),
-        size=lambda r: (7.2, 7.0),
+        ("loading", "time", "at", "scale", "view"),
+        size=shapes.page_with_colours,
     ),
     "mode": Plot(
-        shapes.mode, "shape of a mode", ("frequency", "shape"), ("mode", "scale"), lambda r: (7.2, 7.0)
+        shapes.mode, "shape of a mode", ("shape",), ("mode", "scale", "view"), shapes.page_with_swing
     ),
     "history": Plot(
         traces.history,
-        "a joint or member over time, with its peaks",
+        "a joint, member or group over time, with its peaks",
         ("time", "displacement"),
         ("joint", "member", "quantity"),
     ),
     "forces": Plot(
-        envelopes.forces, "range of axial force of each member", ("axial_force",), size=_by_members
+        envelopes.forces,
+        "range of axial force of each member or group",
+        ("axial_force",),
+        ("member",),
+        _by_bars,
     ),
-    "slack": Plot(envelopes.slack, "when members were slack", ("slack/member",), size=_by_slack_members),
+    "slack": Plot(slackness.slack, "when members were slack", ("slack/member",), ("member",), _by_spells),
     "energy": Plot(traces.energy, "energy ledger", ("energy/time",)),
+    "path": Plot(
+        paths.path,
+        "load factor against a displacement, critical points",
+        ("load_factor", "displacement"),
+        ("joint", "direction"),
+    ),
+    "mechanism": Plot(
+        mechanism.mechanism,
+        "what moves in the drawing without stretching members",
+        choices=("mode", "scale", "view"),
+        size=mechanism.page,
+        fits=mechanism.has_mechanism,
+    ),
+    "rope-curve": Plot(
+        ropes.rope_curve,
+        "hanging members from the side, with sag and tensions",
+        ("rope_curve/position", "loads"),
+        ("member", "loading"),
+        size=lambda result, choices: (7.2, 7.0),
+        panels=(2.0, 1.0),
+    ),
+    "sensitivity": Plot(
+        sensitivity.sensitivity,
+        "frequencies and tensions against pretension",
+        ("frequency", "shape"),
+        ("member", "mode"),
+        size=lambda result, choices: (7.2, 7.6),
+        panels=(3.0, 2.0),
+        fits=lambda result: len(sensitivity.levels(result)) > 1,
+    ),
 }
 
 
@@ -84,9 +129,15 @@ def list_plots(results: Results) -> str:
     for name, result in results.items():
         lines.append(f"{name} ({result.kind}, {result.status})")
         for what, shows in plots_of(result).items():
-            choices = "".join(f" --{choice}" for choice in PLOTS[what].choices)
-            lines.append(f"  {what:<10} {shows}" + (f" [{choices.strip()}]" if choices else ""))
+            choices = "".join(f" --{choice}" for choice in PLOTS[what].choices if _has(result, choice))
+            lines.append(f"  {what:<11} {shows}" + (f" [{choices.strip()}]" if choices else ""))
     return "\n".join(lines)
+
+
+def _has(result: Result, choice: str) -> bool:
+    """Whether there is something to choose from."""
+    kinds = {"time": "history", "at": "equilibrium-path"}
+    return "loads" in result if choice == "loading" else result.kind == kinds.get(choice, result.kind)
 
 
 def draw(result: Result, what: str, **choices: Any) -> Figure:
@@ -99,8 +150,8 @@ def draw(result: Result, what: str, **choices: Any) -> Figure:
     what
         The plot; `plots_of` gives those there are.
     **choices
-        ``joint``, ``member``, ``quantity``, ``mode``, ``loading``, ``time`` [s], ``scale``: each plot
-        takes some of them.
+        ``joint``, ``direction``, ``member``, ``quantity``, ``mode``, ``loading``, ``time`` [s], ``at``,
+        ``scale``, ``view``: each plot takes some of them.
 
     Raises
     ------
@@ -113,11 +164,12 @@ def draw(result: Result, what: str, **choices: Any) -> Figure:
         known = ", ".join(plot.choices) or "none"
         raise InputError(f'plot "{what}" has no choice "{unknown[0]}" (its choices: {known})')
     with styled():
-        figure = Figure(figsize=plot.size(result), layout="constrained")
+        figure = Figure(figsize=plot.size(result, choices), layout="constrained")
         FigureCanvasAgg(figure)
         if result.status != "complete":
             _warn(figure, result)
-        plot.draw(figure.subplots(), result, **choices)
+        axes, *lower = figure.subplots(len(plot.panels), height_ratios=plot.panels, squeeze=False)[:, 0]
+        plot.draw(axes, result, **({"below": lower[0]} if lower else {}), **choices)
     return figure
 
 

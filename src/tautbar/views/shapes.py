@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Mapping
 from typing import Any
 
 import numpy as np
@@ -15,57 +15,133 @@ from numpy.typing import NDArray
 
 from tautbar.errors import InputError
 from tautbar.store import Result
-from tautbar.store.layout import UnknownName
-from tautbar.views.drawing import Drawing, frame, put_names, spots
-from tautbar.views.quantities import figures, fitting, nearest, round_number
-from tautbar.views.style import AXIAL, DASHES, INK, PALE, SERIES, SLACK
+from tautbar.views.drawing import (
+    Bent,
+    Drawing,
+    Size,
+    at_first,
+    frame,
+    legend_below,
+    members_counted,
+    not_at_first,
+    put_names,
+    spots,
+)
+from tautbar.views.quantities import figures, fitting, round_number
+from tautbar.views.ropes import curves
+from tautbar.views.states import state, there, titled
+from tautbar.views.style import AXIAL, DASHED, DASHES, INK, PALE, SERIES, SLACK
 
 Array = NDArray[Any]
 MOST_NAMES = 400  # joints above which names are not even tried
 FEW_MEMBERS = 40  # all of which can be named
 LONG = 0.2  # of the size of the structure: members that can be named among many
 SHOWN_SHARE = 0.08  # of the size of the structure: the largest displacement as drawn, at most
-DASHED = (0, (3, 2))
+WIDE = 1.1  # width over height of a drawing from which its colours stand below, not beside
+BESIDE, BELOW = 1.1, 0.6  # in, room for the colours
 KIND_LOOKS = {  # dash, colour, width
     "bar": ("-", INK, 1.4),
     "tension-only": (DASHES[1], SERIES[1], 1.1),
     "compression-only": (DASHES[2], SERIES[0], 1.6),
+    "hanging": (DASHES[3], SERIES[3], 1.1),
 }
 
 
-def structure(axes: Axes, result: Result) -> list[Artist]:
-    """Joints and members where the model puts them, members by kind."""
-    drawing = Drawing(result)
-    kinds = np.asarray(result.results.model("members/kind"))
-    artists: list[Artist] = []
-    for kind, (dash, colour, width) in KIND_LOOKS.items():
-        of_kind = np.flatnonzero(kinds == kind)
-        if len(of_kind):
-            look = {"linestyle": dash, "colors": colour, "linewidths": width}
-            label = f"{kind} ({len(of_kind)})"
-            artists.append(
-                axes.add_collection(drawing.lines(drawing.positions, of_kind, label=label, **look))
-            )
+def page(result: Result, choices: Mapping[str, Any]) -> Size:
+    """A page that fits the structure as it is seen."""
+    return Drawing(result, choices.get("view")).page()
+
+
+def page_with_swing(result: Result, choices: Mapping[str, Any]) -> Size:
+    """The same with room for a shape that swings both ways."""
+    return Drawing(result, choices.get("view")).page(swing=SHOWN_SHARE)
+
+
+def page_with_colours(result: Result, choices: Mapping[str, Any]) -> Size:
+    """The same with room for the colours of forces."""
+    drawing = Drawing(result, choices.get("view"))
+    room = {"below": BELOW} if _wide(drawing) else {"aside": BESIDE}
+    return drawing.page(**room, swing=SHOWN_SHARE / 2.0)
+
+
+def _wide(drawing: Drawing) -> bool:
+    wide, high = np.ptp(drawing.seen(drawing.positions), axis=0).tolist()
+    return bool(wide > WIDE * high)
+
+
+def structure(axes: Axes, result: Result, *, view: str | None = None) -> list[Artist]:
+    """Joints and members where the model puts them, members by kind, those not there at first apart.
+
+    ``view`` is "front", "side", "top", or azimuth and elevation in degrees, such as "30 20".
+    """
+    drawing = Drawing(result, view, as_modelled=True)
+    bent = _curves_as_modelled(result, drawing)
+    artists = _by_kind(axes, drawing, result, bent) + not_at_first(axes, drawing, result, bent)
     points = drawing.seen(drawing.positions)
-    artists += axes.plot(*points.T, "o", color=INK, markersize=2.5)
+    real = _not_between_pieces(drawing, result)
+    artists += axes.plot(*points[real].T, "o", color=INK, markersize=2.5)
     artists += _supports(axes, result, points)
-    frame(axes, result.results.title, points)
-    _legend_below(axes)
+    artists += frame(axes, drawing, result.results.title, drawing.corners(drawing.positions, bent))
+    legend_below(axes)
     if len(points) <= MOST_NAMES:
         taken = spots(axes, points)
-        artists += put_names(axes, points, drawing.joints, taken, fontweight="bold")
-        artists += _member_names(axes, drawing, points, taken)
+        names = [drawing.joints[k] for k in real]
+        artists += put_names(axes, points[real], names, taken, fontweight="bold")
+        artists += _member_names(axes, drawing, result, bent, taken)
     return artists
 
 
-def _member_names(axes: Axes, drawing: Drawing, points: Array, taken: list[Bbox]) -> list[Artist]:
-    """Names of all members if they are few, else of the long ones: the others crowd each other."""
+def _by_kind(axes: Axes, drawing: Drawing, result: Result, bent: Bent) -> list[Artist]:
+    """Members as lines, one look for each kind; the pieces of a rope count as one."""
+    kinds, present = np.asarray(result.results.model("members/kind")), at_first(result)
+    artists: list[Artist] = []
+    for kind, (dash, colour, width) in KIND_LOOKS.items():
+        of_kind = np.flatnonzero((kinds == kind) & present)
+        if len(of_kind):
+            look = {"linestyle": dash, "colors": colour, "linewidths": width}
+            look["label"] = f"{kind} ({members_counted(result, of_kind)})"
+            lines = drawing.lines(drawing.positions, of_kind, bent, **look)
+            artists.append(axes.add_collection(lines))
+    return artists
+
+
+def _not_between_pieces(drawing: Drawing, result: Result) -> list[int]:
+    """Joints but those between the pieces of a rope."""
+    place = {name: k for k, name in enumerate(drawing.members)}
+    between = {
+        int(drawing.ends[place[piece], 1]) for rope in result.results.ropes.values() for piece in rope[:-1]
+    }
+    return [k for k in range(len(drawing.joints)) if k not in between]
+
+
+def _curves_as_modelled(result: Result, drawing: Drawing) -> Bent:
+    """Hanging members as they hang in the first loading, their ends where the model puts them."""
+    if "rope_curve/position" not in result:
+        return {}
+    return curves(result, 0, np.asarray(result["displacement"][0], dtype=float), 0.0)
+
+
+def _member_names(
+    axes: Axes, drawing: Drawing, result: Result, bent: Bent, taken: list[Bbox]
+) -> list[Artist]:
+    """Names of all members if they are few, else of the long ones: the others crowd each other.
+
+    A rope in pieces has its name once, in its middle.
+    """
+    points = drawing.seen(drawing.positions)
     first, second = points[drawing.ends[:, 0]], points[drawing.ends[:, 1]]
+    middle = (first + second) / 2.0
+    for k, curve in bent.items():
+        middle[k] = drawing.seen(curve[len(curve) // 2])
     lengths = np.linalg.norm(second - first, axis=1)
     least = 0.0 if len(lengths) <= FEW_MEMBERS else LONG * drawing.size
-    named = np.flatnonzero(lengths >= least)
-    middles = ((first + second) / 2.0)[named]
-    names = [drawing.members[k] for k in named]
+    ropes = result.results.ropes
+    pieces = {piece for rope in ropes.values() for piece in rope}
+    named = [k for k in np.flatnonzero(lengths >= least).tolist() if drawing.members[k] not in pieces]
+    place = {name: k for k, name in enumerate(drawing.members)}
+    halves = [place[rope[len(rope) // 2]] for rope in ropes.values()]
+    names = [*(drawing.members[k] for k in named), *ropes]
+    middles = np.concatenate([middle[named], first[halves]])
     return put_names(axes, middles, names, taken, color="#666666", fontsize=6.5)
 
 
@@ -85,57 +161,61 @@ def _supports(axes: Axes, result: Result, points: Array) -> list[Artist]:
     return list(axes.plot(*points[some].T, "^", **look))
 
 
-@dataclass(frozen=True, slots=True)
-class _State:
-    """One state of the structure, in the order of the model; NaN where it was not stored."""
-
-    words: str
-    moved: Array  # m, (J, 3)
-    force: Array  # N, (N,)
-    slack: Array  # (N,)
-
-
 def displaced(
     axes: Axes,
     result: Result,
     *,
     loading: str | None = None,
     time: float | None = None,
+    at: str | None = None,
     scale: float | None = None,
+    view: str | None = None,
 ) -> list[Artist]:
     """The displaced structure, members coloured by axial force, slack ones dashed.
 
     ``loading`` names one of a static analysis (the first by default), ``time`` [s] an instant of a
-    history (that of the greatest displacement by default); ``scale`` magnifies displacements.
+    history (that of the greatest displacement by default), ``at`` a point of a path ("limit point 1";
+    its end by default); ``scale`` magnifies displacements; ``view`` as in `structure`. Members that are
+    not there are not drawn.
     """
-    drawing = Drawing(result)
-    state = _state(result, loading, time)
-    scale = _scale(state.moved, drawing.size) if scale is None else scale
-    place = drawing.positions + scale * state.moved
-    artists: list[Artist] = [
-        axes.add_collection(drawing.lines(drawing.positions, colors=PALE, linewidths=0.6, zorder=1))
-    ]
+    drawing = Drawing(result, view)
+    shown = state(result, drawing.joints, drawing.members, loading=loading, time=time, at=at)
+    scale = _scale(shown.moved, drawing.size) if scale is None else scale
+    place = drawing.positions + scale * shown.moved
+    bent = {} if shown.loading is None else curves(result, shown.loading, shown.moved, scale)
     known = np.asarray(np.isfinite(place).all(axis=1))
-    drawn = known[drawing.ends].all(axis=1) & np.isfinite(state.force)
-    artists += _coloured(axes, drawing, place, state.force, np.flatnonzero(drawn & ~state.slack))
-    slack = np.flatnonzero(drawn & state.slack)
+    artists: list[Artist] = [
+        axes.add_collection(
+            drawing.lines(
+                drawing.positions, np.flatnonzero(shown.there), colors=PALE, linewidths=0.6, zorder=1
+            )
+        )
+    ]
+    drawn = known[drawing.ends].all(axis=1) & np.isfinite(shown.force) & shown.there
+    coloured = np.flatnonzero(drawn & ~shown.slack)
+    artists += _coloured(axes, drawing, place, shown.force, coloured, bent)
+    slack = np.flatnonzero(drawn & shown.slack)
     if len(slack):
         look = {"colors": SLACK, "linewidths": 1.0, "linestyle": DASHED, "label": f"slack ({len(slack)})"}
-        artists.append(axes.add_collection(drawing.lines(place, slack, **look)))
+        artists.append(axes.add_collection(drawing.lines(place, slack, bent, **look)))
     axes.add_line(Line2D([], [], color=PALE, linewidth=0.8, label="where the model puts it"))
-    seen = np.concatenate([drawing.seen(drawing.positions), drawing.seen(place[known])])
-    frame(axes, f"{result.name}: {state.words}\n{_moved_words(state.moved, scale)}", seen)
-    _legend_below(axes)
+    seen = np.concatenate([drawing.seen(drawing.positions), drawing.corners(place[known], bent)])
+    title = f"{titled(result, shown.words)}\n{_moved_words(shown.moved, scale)}"
+    artists += frame(axes, drawing, title, seen)
+    legend_below(axes)
     return artists
 
 
-def _coloured(axes: Axes, drawing: Drawing, place: Array, force: Array, members: Array) -> list[Artist]:
+def _coloured(
+    axes: Axes, drawing: Drawing, place: Array, force: Array, members: Array, bent: Bent
+) -> list[Artist]:
     unit = fitting(force, "N")
     values = unit(force[members])
     largest = float(np.abs(values).max(initial=0.0)) or 1.0
     lines = drawing.lines(
         place,
         members,
+        bent,
         array=values,
         cmap=AXIAL,
         norm=Normalize(-largest, largest),
@@ -145,63 +225,12 @@ def _coloured(axes: Axes, drawing: Drawing, place: Array, force: Array, members:
     axes.add_collection(lines)
     figure = axes.get_figure()
     if figure is not None:
-        bar = figure.colorbar(lines, ax=axes, shrink=0.75, aspect=28, pad=0.02)
+        beside: dict[str, Any] = {"shrink": 0.75, "aspect": 28, "pad": 0.02}
+        below: dict[str, Any] = {"location": "bottom", "shrink": 0.6, "aspect": 40, "pad": 0.03}
+        bar = figure.colorbar(lines, ax=axes, **(below if _wide(drawing) else beside))
         bar.set_label(unit.label("axial force, tension +"))
         bar.outline.set_visible(False)
     return [lines]
-
-
-def _state(result: Result, loading: str | None, time: float | None) -> _State:
-    if result.kind == "history":
-        if loading is not None:
-            raise InputError(f'"{result.name}" is a history: choose a time, not a loading')
-        place = _instant(result, time)
-        words = f"at {result['time'][place]:.4g} s"
-    else:
-        if time is not None:
-            raise InputError(f'"{result.name}" has no time: choose a loading')
-        names = [str(name) for name in result.values("loads")]
-        if loading is not None and loading not in names:
-            raise UnknownName("loading", loading, names)
-        place = 0 if loading is None else names.index(loading)
-        words = names[place]
-    moved = _in_model_order(result, "displacement", place, "joint")
-    force = _in_model_order(result, "axial_force", place, "member")
-    return _State(words, moved, force, _slack(result, place, force))
-
-
-def _instant(result: Result, time: float | None) -> int:
-    stored = result.time
-    if not len(stored):
-        raise InputError(f'"{result.name}" has no stored step')
-    if time is not None:
-        return nearest(time, stored, "time", "s")
-    if "peaks/displacement/max" not in result:
-        return len(stored) - 1
-    table = result.peak("displacement").ravel()
-    low, high = int(np.nanargmin(table["min"])), int(np.nanargmax(table["max"]))
-    row, when = (low, "time_of_min") if -table["min"][low] > table["max"][high] else (high, "time_of_max")
-    return int(np.abs(stored - table[when][row]).argmin())
-
-
-def _in_model_order(result: Result, path: str, place: int, thing: str) -> Array:
-    """One row of a dataset for all joints or members of the model, NaN where it was not stored."""
-    row = np.asarray(result[path][place], dtype=float)
-    names = result.results.joints if thing == "joint" else result.results.members
-    if len(row) == len(names):
-        return row
-    index = {name: k for k, name in enumerate(names)}
-    whole = np.full((len(names), *row.shape[1:]), np.nan)
-    whole[[index[str(name)] for name in result.labels(path, 1)]] = row
-    return whole
-
-
-def _slack(result: Result, place: int, force: Array) -> Array:
-    if "taut" in result:
-        return ~np.asarray(result["taut"][place], dtype=bool)
-    kinds = np.asarray(result.results.model("members/kind"))
-    ties, struts = kinds == "tension-only", kinds == "compression-only"
-    return np.asarray((ties & (force <= 0.0)) | (struts & (force >= 0.0)))
 
 
 def _scale(moved: Array, size: float) -> float:
@@ -218,29 +247,34 @@ def _moved_words(moved: Array, scale: float) -> str:
     return f"greatest displacement {fitting(largest, 'm').text(largest)}, {times}"
 
 
-def mode(axes: Axes, result: Result, *, mode: int = 1, scale: float = 1.0) -> list[Artist]:
-    """A mode shape, both ways of its swing; ``mode`` counts from 1, ``scale`` magnifies what is usual."""
-    count = len(result["frequency"])
+def mode(
+    axes: Axes, result: Result, *, mode: int = 1, scale: float = 1.0, view: str | None = None
+) -> list[Artist]:
+    """A shape of vibration or buckling, both ways of its swing, of the members that are there.
+
+    ``mode`` counts from 1, ``scale`` magnifies what is usual; ``view`` as in `structure`.
+    """
+    count = len(result["shape"])
     if not 1 <= mode <= count:
         raise InputError(f'mode {mode}: "{result.name}" has modes 1 to {count}')
-    drawing = Drawing(result)
+    drawing = Drawing(result, view)
     shape = np.asarray(result["shape"][mode - 1], dtype=float)
     shape = shape * (
         scale * SHOWN_SHARE * drawing.size / (np.linalg.norm(shape, axis=1).max(initial=0.0) or 1.0)
     )
     one, other = drawing.positions + shape, drawing.positions - shape
+    drawn = np.flatnonzero(there(result, drawing.members))
     artists: list[Artist] = [
-        axes.add_collection(drawing.lines(drawing.positions, colors=PALE, linewidths=0.6)),
-        axes.add_collection(drawing.lines(other, colors=SERIES[4], linewidths=0.8, linestyle=DASHED)),
-        axes.add_collection(drawing.lines(one, colors=SERIES[0], linewidths=1.4)),
+        axes.add_collection(drawing.lines(drawing.positions, drawn, colors=PALE, linewidths=0.6)),
+        axes.add_collection(drawing.lines(other, drawn, colors=SERIES[4], linewidths=0.8, linestyle=DASHED)),
+        axes.add_collection(drawing.lines(one, drawn, colors=SERIES[0], linewidths=1.4)),
     ]
-    frequency = float(result["frequency"][mode - 1])
     both = np.concatenate([drawing.seen(one), drawing.seen(other)])
-    frame(
-        axes, f"{result.name}: mode {mode}, {figures(frequency, 4)} Hz\nsize of the swing is arbitrary", both
-    )
-    return artists
+    title = f"{result.name}: {_mode_words(result, mode)}\nsize of the swing is arbitrary"
+    return artists + frame(axes, drawing, title, both)
 
 
-def _legend_below(axes: Axes) -> None:
-    axes.legend(loc="upper center", bbox_to_anchor=(0.5, 0.0), ncols=4, borderaxespad=0.2)
+def _mode_words(result: Result, mode: int) -> str:
+    if "frequency" in result:
+        return f"mode {mode}, {figures(float(result['frequency'][mode - 1]), 4)} Hz"
+    return f"buckling mode {mode}, load factor {figures(float(result['load_factor'][mode - 1]), 4)}"

@@ -23,6 +23,7 @@ DASHES: tuple[Any, ...] = (
     "-",
 )
 AXIAL = LinearSegmentedColormap.from_list("axial", [COMPRESSION, ZERO, TENSION])
+DASHED = (0, (3, 2))
 DOTS = 150  # per inch, of a picture
 STYLE: dict[str, Any] = {
     "font.size": 9,

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
@@ -13,14 +14,15 @@ from tautbar.errors import InputError
 from tautbar.records.frames import ENERGY
 from tautbar.store import Result
 from tautbar.views.quantities import Shown, fitting, thin
-from tautbar.views.style import DASHES, SERIES, say_nothing_to_show
+from tautbar.views.rows import inside
+from tautbar.views.style import DASHES, PALE, SERIES, say_nothing_to_show
 
 Array = NDArray[Any]
-STILL = 1e-6  # of the largest component: below it a component is rounding, and not drawn
+STILL = 1e-6  # of the largest: what stays below it is rounding, and not drawn
+MOST_LINES = 7  # with a colour of their own
 LEDGER_WORDS = {
     "kinetic": "kinetic",
-    "strain": "strain, change",
-    "load_potential": "potential of loads, change",
+    "stored": "strain and potential of loads, change",
     "event_work": "work of events",
     "damped": "damped",
     "dissipated_by_method": "taken by the method",
@@ -38,8 +40,8 @@ def history(
 ) -> list[Artist]:
     """A quantity over time with its peaks over every computed step marked.
 
-    ``member`` gives its axial force; ``joint`` its displacement, or the ``quantity`` named. By default
-    the joint that moves most.
+    ``member`` gives its axial force, of a group or rope those of its members; ``joint`` its
+    displacement, or the ``quantity`` named. By default the joint that moves most.
     """
     if joint is not None and member is not None:
         raise InputError("choose a joint or a member, not both")
@@ -49,18 +51,18 @@ def history(
     if name is None and (joint or member):
         raise InputError(f'"{quantity}" is of a {thing}: name a {thing}')
     name = name or _liveliest(result, quantity, thing)
-    values = result.at(quantity, **{thing: name})
-    values = values[:, np.newaxis] if values.ndim == 1 else values
     words = {"axial_force": "axial force, tension +"}.get(quantity, quantity.replace("_", " "))
-    title = f"{result.name}: {quantity.replace('_', ' ')} of {thing} {name}"
-    if not len(values):
+    several = _stored(result, quantity, name) if thing == "member" else []
+    what = f"{len(several)} members of" if several else thing
+    title = f"{result.name}: {quantity.replace('_', ' ')} of {what} {name}"
+    if not len(result.time):
         return say_nothing_to_show(axes, f"{title}: no step was stored")
-    labels = ("x", "y", "z") if values.shape[1] == 3 else ("",)
-    unit = fitting(values, str(result[quantity].attrs["units"]))
-    artists = _traces(axes, result, values, labels, unit, _peaks(result, quantity, thing, name))
+    lines = _lines(result, quantity, thing, several or [name])
+    unit = fitting([line.size for line in lines], str(result[quantity].attrs["units"]))
+    artists = _traces(axes, result.time, lines, unit)
     axes.set_xlabel("time [s]")
     axes.set_ylabel(unit.label(words))
-    axes.set_title(title)
+    axes.set_title(title + _left_pale(lines))
     axes.set_xlim(0.0, float(result.time[-1]) or None)
     axes.legend(loc="upper center", bbox_to_anchor=(0.5, -0.13), ncols=1)
     return artists
@@ -87,6 +89,49 @@ def _liveliest(result: Result, quantity: str, thing: str) -> str:
     return str(table[thing][size.argmax()])
 
 
+def _stored(result: Result, quantity: str, name: str) -> list[str]:
+    """Members of a group or rope that were stored; none if the name is that of a member."""
+    labels = [str(label) for label in result.labels(quantity, 1)]
+    if name in labels:
+        return []
+    return [labels[k] for k in inside(result, labels, name)]
+
+
+@dataclass(frozen=True, slots=True)
+class Line:
+    """One curve over time, with its least and greatest value over every computed step where known."""
+
+    label: str
+    values: Array
+    peak: Any | None
+
+    @property
+    def size(self) -> float:
+        """Its largest value."""
+        return float(np.nan_to_num(np.abs(self.values)).max())
+
+
+def _lines(result: Result, quantity: str, thing: str, names: list[str]) -> list[Line]:
+    """A line for each component that moves of one joint or member, or for each of several, largest first."""
+    lines = []
+    for name in names:
+        values = result.at(quantity, **{thing: name})
+        parts = values[:, np.newaxis] if values.ndim == 1 else values
+        labels = ["x", "y", "z"] if parts.shape[1] == 3 else [name if len(names) > 1 else ""]
+        peaks = _peaks(result, quantity, thing, name)
+        for k, label in enumerate(labels):
+            lines.append(Line(label, parts[:, k], None if peaks is None else peaks[k]))
+    if len(names) > 1:
+        return sorted(lines, key=lambda line: -line.size)
+    largest = max(line.size for line in lines)
+    return [line for line in lines if len(lines) == 1 or line.size > STILL * largest] or lines[:1]
+
+
+def _left_pale(lines: list[Line]) -> str:
+    more = len(lines) - MOST_LINES
+    return f"\nthe {MOST_LINES} greatest in colour, {more} more pale" if more > 0 else ""
+
+
 def _peaks(result: Result, quantity: str, thing: str, name: str) -> Array | None:
     if f"peaks/{quantity}/max" not in result:
         return None
@@ -94,22 +139,19 @@ def _peaks(result: Result, quantity: str, thing: str, name: str) -> Array | None
     return np.asarray(table[table[thing] == name])
 
 
-def _traces(
-    axes: Axes, result: Result, values: Array, labels: tuple[str, ...], unit: Shown, peaks: Array | None
-) -> list[Artist]:
-    time, largest = result.time, float(np.abs(values).max())
+def _traces(axes: Axes, time: Array, lines: list[Line], unit: Shown) -> list[Artist]:
     artists: list[Artist] = []
-    for k, label in enumerate(labels):
-        if len(labels) > 1 and np.abs(values[:, k]).max() <= STILL * largest:
-            continue
-        words = label if peaks is None else " ".join([label, _peak_words(peaks[k], unit)]).strip()
-        at, shown = thin(time, values[:, k])
+    for line in lines[MOST_LINES:]:
+        at, shown = thin(time, line.values)
+        artists += axes.plot(at, unit(shown), color=PALE, linewidth=0.6, zorder=1)
+    for k, line in enumerate(lines[:MOST_LINES]):
+        words = line.label if line.peak is None else f"{line.label} {_peak_words(line.peak, unit)}".strip()
+        at, shown = thin(time, line.values)
         look: dict[str, Any] = {"color": SERIES[k], "linestyle": DASHES[k]}
         artists += axes.plot(at, unit(shown), label=words, **look)
-        if peaks is not None:
-            ends = ("min", "v"), ("max", "^")
-            for end, marker in ends:
-                spot = ([peaks[k]["time_of_" + end]], [unit(peaks[k][end])])
+        if line.peak is not None:
+            for end, marker in (("min", "v"), ("max", "^")):
+                spot = ([line.peak["time_of_" + end]], [unit(line.peak[end])])
                 artists += axes.plot(*spot, marker, color=SERIES[k], markersize=7, markeredgecolor="white")
     return artists
 
@@ -120,17 +162,22 @@ def _peak_words(peak: Any, unit: Shown) -> str:
 
 
 def energy(axes: Axes, result: Result) -> list[Artist]:
-    """The energy ledger: what each store gained since the start, what events put in, what was lost."""
+    """The energy ledger: what was gained since the start, what events put in, what was lost.
+
+    Strain energy and the potential of loads stand as one: in a structure under load they exchange
+    large amounts that cancel.
+    """
     time = result.values("energy/time")
     if not len(time):
         return say_nothing_to_show(axes, f"{result.name}: no step was computed")
     ledger = {name: result.values(f"energy/{name}") for name in ENERGY[1:]}
-    for name in ("strain", "load_potential"):
-        ledger[name] = ledger[name] - ledger[name][0]
-    unit = fitting([np.abs(values).max() for values in ledger.values()], "J")
+    stored = ledger.pop("strain") + ledger.pop("load_potential")
+    ledger = {"kinetic": ledger.pop("kinetic"), "stored": stored - stored[0], **ledger}
+    largest = max(float(np.abs(values).max()) for values in ledger.values())
+    unit = fitting(largest, "J")
     artists: list[Artist] = []
     for k, (name, values) in enumerate(ledger.items()):
-        if values.any() or name == "unaccounted":
+        if np.abs(values).max() > STILL * largest or name == "unaccounted":
             look: dict[str, Any] = {"color": SERIES[k], "linestyle": DASHES[k], "label": LEDGER_WORDS[name]}
             at, shown = thin(time, values)
             artists += axes.plot(at, unit(shown), **look)
