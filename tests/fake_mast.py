@@ -123,6 +123,8 @@ def static_record(mast: FakeMast, name: str = "standing", status: str = "complet
             "axial_force": Field(force, "N", "axial force, tension positive", per_member),
             "reaction": Field(1e3 * moved, "N", "force of the supports", per_joint),
             "taut": Field(taut, "1", "whether taut", per_member),
+            "envelope/min": Field(force.min(axis=0), "N", "least axial force", ("member",)),
+            "envelope/max": Field(force.max(axis=0), "N", "greatest axial force", ("member",)),
             "audit/force_residual": Field(np.full(3, 1e-12), "1", "force residual", ("loading",)),
         },
         audit_lines=("force residual 1e-12 of the loads",),

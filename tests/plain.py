@@ -14,7 +14,7 @@ from dataclasses import dataclass
 import mpmath
 import numpy as np
 
-KIND = {0: "bar", 1: "tie", 2: "strut"}
+KIND = {0: "bar", 1: "tie", 2: "strut", 3: "hanging"}
 
 
 @dataclass
@@ -59,7 +59,7 @@ def rods(parts):
         if m.unstressed_length[i] == m.unstressed_length[i]:
             L0 = m.unstressed_length[i]
         elif m.slack[i] == m.slack[i]:
-            L0 = l + m.slack[i]
+            L0 = l - m.slack[i] if KIND[m.kind[i]] == "strut" else l + m.slack[i]
         elif m.pretension[i] == m.pretension[i]:
             L0 = l / (1 + m.pretension[i] / EA) if EA else l - m.pretension[i] / section.stiffness
         out.append(
@@ -293,3 +293,29 @@ def jacobian(function, x, step=1e-30):
 def as_joints(flat):
     """Flat numbers, three a joint, as a list of joints."""
     return [list(flat[3 * j : 3 * j + 3]) for j in range(len(flat) // 3)]
+
+
+def catenary_span(H, V, L0, EA, w):
+    """Level and vertical distance of a catenary's ends, V the mean of its vertical pulls (Irvine 1981).
+
+    Textbook form, whose differences cancel where the rope is taut: give it more digits than are wanted.
+    """
+    low, high = V - w * L0 / 2, V + w * L0 / 2
+    T0, T1 = root(H * H + low * low), root(H * H + high * high)
+    log = mpmath.log if isinstance(T0, mpmath.mpf) else np.log
+    return [H * L0 / EA + H / w * log((high + T1) / (low + T0)), V * L0 / EA + (T1 - T0) / w]
+
+
+def catenary_flexibility(H, V, L0, EA, w):
+    """Derivatives of the span over (H, V) to 50 digits: dx/dH, dx/dV = dz/dH, dz/dV."""
+    with mpmath.workdps(80):
+        H, V, L0, EA, w = (mpmath.mpf(float(v)) for v in (H, V, L0, EA, w))
+        # Small beside H and beside all that V - w L0/2 may leave; its square is beyond 50 digits.
+        step = H * mpmath.mpf(10) ** -26
+
+        def slope(dH, dV):
+            up = catenary_span(H + dH, V + dV, L0, EA, w)
+            down = catenary_span(H - dH, V - dV, L0, EA, w)
+            return [(a - b) / (2 * step) for a, b in zip(up, down, strict=True)]
+
+        return (*slope(step, 0), slope(0, step)[1])

@@ -43,7 +43,7 @@ def test_the_family_in_the_example_has_the_names_told() -> None:
     model = Model(**together(tomllib.loads(BLOCKS[0]), tomllib.loads(block)))
     names = [loading.name for loading in model.parts.loadings["strength"]]
     assert "strength: lanterns 1.5, gust 1.5" in names
-    assert len(names) == 2 * 3
+    assert len(names) == 2 * 5
 
 
 def test_every_key_the_reader_knows_is_in_the_document() -> None:

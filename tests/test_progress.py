@@ -60,9 +60,8 @@ def test_a_plain_line_tells_share_time_left_amount_and_note(time: list[float]) -
     shown.start("march", total=4.0, unit="s")
     time[0] += 20.0
     shown.to(1.0, "3 slack")
-    assert (
-        out.getvalue().splitlines()[1] == "march  [#####...............]  25 %  1 min 00 s left  1 s  3 slack"
-    )
+    told = out.getvalue().splitlines()[1]
+    assert told == "march  [#####...............]  25 %  1 min 00 s left  at 1 s  3 slack"
 
 
 def test_without_a_total_there_is_no_bar(time: list[float]) -> None:

@@ -33,6 +33,7 @@ class FakeJob:
     answers: dict
     asked: list = field(default_factory=list)
     model_fields = MAST.model_fields
+    warnings = ()
 
     def run(self, name):
         self.asked.append(name)

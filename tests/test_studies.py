@@ -11,7 +11,14 @@ from pathlib import Path
 import pytest
 
 STUDIES = Path(__file__).parents[1] / "studies"
-NAMES = ["lantern-gantry", "tide-gauge-mast", "x-braced-tower"]
+NAMES = [
+    "guy-tuning",
+    "lantern-arch",
+    "lantern-gantry",
+    "rope-footbridge",
+    "tide-gauge-mast",
+    "x-braced-tower",
+]
 
 
 @pytest.mark.slow

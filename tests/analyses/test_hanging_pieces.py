@@ -30,7 +30,7 @@ def hung(pieces=32, **given):
 def sag_of(a, pieces):
     """Vertical distance from the middle of the chord, between joints as a straight piece has it."""
     names = ["low", *(f"rope@{i}" for i in range(1, pieces)), "high"]
-    s = a.context.system.structure
+    s = a.context.first_scene().structure
     X = s.position.T + a["displacement"][0]
     X = X[[a.context.joint_names.index(n) for n in names]]
     return RISE / 2 - np.interp(SPAN / 2, X[:, 0], X[:, 2])
@@ -41,7 +41,7 @@ def test_each_way_of_giving_the_length(way):
     """All pieces together have the length of the catenary, to rounding."""
     a = hung(**{way: WAYS[way]})
     wanted = catenary.length_for_tension(450.0, *EXACT[1:]) if way == "pretension" else LENGTH
-    assert a.context.system.structure.L0.sum() == pytest.approx(wanted, rel=1e-12)
+    assert a.context.first_scene().structure.L0.sum() == pytest.approx(wanted, rel=1e-12)
 
 
 def test_pretension_is_the_tension_at_the_lower_end_under_own_weight():
@@ -127,7 +127,7 @@ def test_frequencies_of_a_taut_rope_are_those_of_a_string():
     state = solve_static(model, "dead")
     modes = find_modes(model, state, count=8)
     across = modes["effective_mass"][:, 1] > 0.9 * modes["effective_mass"].sum(axis=1)
-    l = state.context.system.structure.L0.sum()
+    l = state.context.first_scene().structure.L0.sum()
     T = state["axial_force"][0].mean()
     assert modes["frequency"][across][0] == pytest.approx(np.sqrt(T / (LINE * l / 20)) / 40, rel=1e-2)
 

@@ -9,7 +9,7 @@ import structures
 from structures import held, member
 from tautbar import Model, find_modes, solve_history, solve_static
 from tautbar.analyses.job import prepare
-from tautbar.model.parts import Damping, Store
+from tautbar.model.parts import Damping
 
 G = 9.80665
 
@@ -69,11 +69,12 @@ SHAPES = {
 def test_pulses_that_do_not_fit_the_steps(shape, method, start, duration):
     """Corners between steps are landed on, so that jumps cost no accuracy: 3e-3 is (w dt)^2 and phase.
 
-    The last pulse is shorter than one step and begins within the first: its impulse is put in as if
-    spread evenly, so it comes up to T/6 too early (sawtooth), a phase of w T/6 = 4e-3.
+    The last pulse is shorter than one step and begins within the first: a curved one is crossed in ten
+    steps of its own (average acceleration, which asks for forces at the ends of a step, would not meet it
+    otherwise), where the mean of both ends falls short of a sine's impulse by pi^2/12/100 = 8.2e-3;
+    another's impulse is put in as if spread evenly, so it comes up to T/6 too early (sawtooth), a phase
+    of w T/6 = 4e-3.
     """
-    if (method, shape, duration) == ("newmark", "half-sine", 0.0013):
-        pytest.xfail("Newmark takes forces at both ends of a step: a half-sine within one is missed whole")
     event = {"shape": shape, "start": start, "duration": duration}
     model = structures.build(oscillator(event=event))
     h = solve_history(model, events=["hit"], duration=0.5, time_step=2e-3, method=method, geometry="small")
@@ -81,31 +82,41 @@ def test_pulses_that_do_not_fit_the_steps(shape, method, start, duration):
     outside = (h["time"] <= start) | (h["time"] >= start + duration)
     found = h.displacement("B")[:, 0]
     limit = 5e-3 if duration < 2e-3 else 3e-3
+    if (method, shape, duration) == ("newmark", "half-sine", 0.0013):
+        limit = 8.5e-3
     assert found[outside] == pytest.approx(exact[outside], abs=limit * np.abs(exact).max())
     assert h["time"] == pytest.approx(2e-3 * np.arange(251), abs=1e-15)
     corners = {0.0, start, start + duration} | ({start + duration / 2} if shape == "triangle" else set())
+    if shape == "half-sine" and duration < 10 * 2e-3:
+        corners |= set(start + duration * np.arange(1, 10) / 10)
     between = [c for c in corners if abs(c / 2e-3 - round(c / 2e-3)) > 1e-6]
     assert h["audit/computed_steps"] == 250 + len(between)
     assert h["audit/energy_left_over"] < 1e-9
     assert any("hit lasts fewer than 10 steps" in w for w in h.record.warnings) == (duration < 0.02)
 
 
+def stored(every, **settings):
+    """A pushed oscillator's history with every so many steps kept: its frames, those kept, its record."""
+    asked = {"name": "h", "kind": "history", "precision": "double", "store": {"every": every}}
+    run = prepare(structures.build(oscillator(analyses=[asked | settings]))).run("h")
+    frames = list(run.frames())
+    return frames, [f for f in frames if f.values is not None], run.record()
+
+
 def test_the_end_is_landed_on_exactly_and_kept():
-    model = structures.build(oscillator())
-    h = solve_history(
-        model, duration=0.0207, time_step=1e-3, loads="push", geometry="small", store=Store(every=4)
-    )
-    assert h["time"][-1] == 0.0207
-    assert h["time"][:-1] == pytest.approx([0.0, 0.004, 0.008, 0.012, 0.016, 0.02])
+    _, kept, _ = stored(4, duration=0.0207, time_step=1e-3, loads="push", geometry="small")
+    times = [f.time for f in kept]
+    assert times[-1] == 0.0207
+    assert times[:-1] == pytest.approx([0.0, 0.004, 0.008, 0.012, 0.016, 0.02])
     exact = 0.02 * (1 - np.cos(OMEGA * 0.0207))
-    assert h.displacement("B")[-1, 0] == pytest.approx(exact, rel=1e-4)
+    assert kept[-1].values["displacement"][1, 0] == pytest.approx(exact, rel=1e-4)
 
 
 def test_peaks_are_of_every_computed_step_whatever_is_stored():
-    model = structures.build(oscillator())
     settings = {"duration": 0.5, "time_step": 1e-3, "loads": "push", "geometry": "small"}
-    every, few = solve_history(model, **settings), solve_history(model, store=Store(every=50), **settings)
-    assert few["time"].size == 11
+    every = solve_history(structures.build(oscillator()), **settings)
+    frames, kept, few = stored(50, **settings)
+    assert len(kept) == 11
     for path, field in every.record.fields.items():
         if path.startswith("peaks/"):
             assert (few[path] == field.values).all(), path
@@ -113,8 +124,8 @@ def test_peaks_are_of_every_computed_step_whatever_is_stored():
     assert few["peaks/displacement/max"][1, 0] == u.max()
     assert few["peaks/displacement/time_of_max"][1, 0] == every["time"][u.argmax()]
     assert few["peaks/axial_force/min"][0] == every.axial_force("spring").min()
-    assert few.displacement("B")[:, 0].max() < u.max()
-    assert few["energy/time"].size == 501
+    assert max(f.values["displacement"][1, 0] for f in kept) < u.max()
+    assert [f.energy[0] for f in frames] == list(every["energy/time"])
 
 
 def test_only_what_is_asked_for_is_stored():
@@ -198,8 +209,8 @@ def test_reactions_and_loads_are_the_rate_of_momentum(method, step, mass):
     model = structures.build(described)
     state = solve_static(model, "all")
     h = solve_history(model, state, events=["hit"], duration=0.07, time_step=step, method=method, mass=mass)
-    acting = h.context.acting(model.parts.loadings["all"][0])
-    M = h.context.system.joint_mass(acting.mass, mass == "lumped").toarray()
+    acting = h.context.first_scene().acting(model.parts.loadings["all"][0])
+    M = h.context.first_scene().system.joint_mass(acting, mass == "lumped").toarray()
     pulse = np.sin(np.pi * np.clip((h["time"] - 0.01) / 0.05, 0, 1))[:, None] * np.array(hit)
     rate = np.einsum("jk,tkc->tc", M, h["acceleration"])
     total = h["reaction"].sum(axis=1) + acting.force.sum(axis=1) + pulse
@@ -218,8 +229,8 @@ def test_reactions_balance_with_damping_while_members_snap():
         model, state, events=["hit"], duration=1.0, time_step=2e-3, damping=Damping((0.05,), (5.0,)),
     )  # fmt: skip
     assert h["slack/member"].size > 3
-    M = h.context.system.joint_mass(np.zeros(5), True).toarray()
-    load = h.context.acting(model.parts.loadings["dead"][0]).force.sum(axis=1)
+    M = h.context.first_scene().system.joint_mass(h.context.drawn().acting, True).toarray()
+    load = h.context.first_scene().acting(model.parts.loadings["dead"][0]).force.sum(axis=1)
     pulse = np.where(h["time"] < 0.2, np.sin(np.pi * h["time"] / 0.2), 0.0)[:, None] * np.array(
         [6000.0, 2500, 0]
     )

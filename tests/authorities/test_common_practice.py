@@ -16,10 +16,10 @@ from tautbar.errors import ModelError
 
 def stiffness(model: tautbar.Model) -> Array:
     """The assembled matrix over the free unknowns, dense [N/m]."""
-    context = Context(model.parts)
-    potential = context.potential(context.drawn().acting, small=True)
-    lower = potential.curvature(potential.look(np.zeros(context.system.n)))
-    return np.asarray(context.system.pattern.to_csc(lower).toarray())
+    drawn = Context(model.parts).drawn()
+    potential = drawn.scene.potential(drawn.acting, small=True)
+    lower = potential.curvature(potential.look(drawn.q))
+    return np.asarray(drawn.scene.system.pattern.to_csc(lower).toarray())
 
 
 def truss(joints: dict[str, list[float]], pairs: list[tuple[str, str]], **more: Any) -> tautbar.Model:

@@ -126,7 +126,9 @@ CONSERVING = {"method": "energy-conserving", "snap_loss": "none"}
 def test_mass_across_a_cable(T0: float, quantity: str, more: dict[str, Any]) -> None:
     """CLOSED FORM (exact period by quadrature, 10 digits). 1e-6, as the data say; extrapolated."""
     exact = C24[quantity]["computed"]
-    found = [free_period(across(0.1, T0), 0.1, 2, exact, n, **more) for n in STEPS]
+    # Newmark's ledger closes to 1e-6 of the motion's energy only at half the step.
+    steps = STEPS if more == CONSERVING else tuple(2 * n for n in STEPS)
+    found = [free_period(across(0.1, T0), 0.1, 2, exact, n, **more) for n in steps]
     assert extrapolated(*found) == pytest.approx(exact, rel=1e-6)
 
 

@@ -347,7 +347,7 @@ def test_suspended_cable_against_another_program(lambda2: float, quantity: str) 
     assert 2 * f * 100.0 / np.sqrt(H) == pytest.approx(values("C07")[quantity]["computed"], rel=1e-4)
 
 
-@pytest.mark.parametrize("stiff", [1e7, 1e9])
+@pytest.mark.parametrize("stiff", [1e7, 1e8])
 def test_the_slow_sway_of_a_stiff_chain_is_no_mechanism(stiff: float) -> None:
     """C08 again, for ropes as stiff as real ones: a frequency must not be rounded to 0 Hz.
 

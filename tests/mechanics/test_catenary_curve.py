@@ -8,7 +8,6 @@ from __future__ import annotations
 
 import itertools
 
-import mpmath
 import numpy as np
 import pytest
 from hypothesis import given, settings
@@ -55,34 +54,6 @@ def test_end_forces_lead_to_the_other_end(name):
     H, V = catenary.end_force(L0, EA, w, x, z)
     assert H > 0
     assert integrated(L0, EA, w, H, V) == pytest.approx([x, z], abs=1e-10 * L0)
-
-
-@pytest.mark.parametrize("name", ROPES)
-def test_flexibility_is_the_derivative_of_the_span(name):
-    """Central differences at 40 digits of the same span, written anew: rounding of doubles is the limit."""
-    L0, EA, w, x, z = ROPES[name]
-    H, V = catenary.end_force(L0, EA, w, x, z)
-    with mpmath.workdps(50):
-        M = mpmath.mpf
-
-        def span(h, v):
-            def along(s):
-                T = mpmath.sqrt(h * h + (v + w * s) ** 2)
-                return mpmath.matrix([h * s / EA + h / w * mpmath.log((v + w * s + T) / h),
-                                      (v + w * s / 2) * s / EA + T / w])  # fmt: skip
-
-            return along(M(L0)) - along(M(0))
-
-        def slope(dh, dv):
-            return (span(M(H) + dh, M(V) + dv) - span(M(H) - dh, M(V) - dv)) / (2 * (dh + dv))
-
-        step = M(10) ** -20 * M(H)
-        expected = np.array([[float(c) for c in slope(step, 0)], [float(c) for c in slope(0, step)]]).T
-    found = catenary._flexibility(H, V, L0, EA, w)
-    # Entries are differences of terms of size L0/H: that is what their digits are of.
-    assert found == pytest.approx(expected, abs=1e-13 * L0 / min(H, 1e6))
-    assert found[0, 1] == found[1, 0]
-    assert np.linalg.eigvalsh(found).min() > 0
 
 
 def test_parabola_of_a_shallow_rope():
@@ -164,10 +135,11 @@ def test_length_is_found_again_from_sag_and_from_tension(shape, steep, stiff, ch
 def test_points_lie_on_the_integrated_curve():
     L0, EA, w, x, z = ROPES["very stretchy"]
     H, V = catenary.end_force(L0, EA, w, x, z)
-    s = L0 * np.array([0.0, 0.2, 0.55, 1.0])
-    curve = catenary.points(L0, EA, w, x, z, s)
-    for at, point in zip(s[1:], curve.T[1:], strict=True):
-        assert point == pytest.approx(integrated(at, EA, w, H, V), abs=1e-10 * L0)
+    curve = catenary.points(L0, EA, w, x, z, 5)
+    assert (curve[:, 0] == 0).all()
+    assert (curve[1] == 0).all()
+    for s, point in zip(L0 * np.array([0.25, 0.5, 0.75, 1.0]), curve.T[1:], strict=True):
+        assert point[[0, 2]] == pytest.approx(integrated(s, EA, w, H, V), abs=1e-10 * L0)
 
 
 def test_impossible_sags_are_refused():
@@ -176,13 +148,11 @@ def test_impossible_sags_are_refused():
         catenary.length_for_sag(1e-7, 50.0, 12.0, 20.0, 0.0)
 
 
-@pytest.mark.xfail(
-    strict=True, raises=ValueError, reason="differences of near asinh cancel: T/(w L0) above 1e7"
-)
-@pytest.mark.parametrize("w", [1e-5, 1e-8])
+@pytest.mark.parametrize("w", [1e-2, 1e-5, 1e-8, 1e-12])
 def test_weight_towards_nothing_is_the_tie(w):
     """A taut rope that weighs next to nothing is a straight elastic tie."""
     L0, EA, x, z = 10.2, 5e5, 20.0, 4.0
     chord = np.hypot(x, z)
     H, V = catenary.end_force(L0, EA, w, x, z)
-    assert np.hypot(H, V) == pytest.approx(EA * (chord / L0 - 1), rel=1e-9)
+    # Its ends differ by its weight over the rise, the lower one by half of that from the tie.
+    assert np.hypot(H, V) == pytest.approx(EA * (chord / L0 - 1), rel=1e-9, abs=w * z)

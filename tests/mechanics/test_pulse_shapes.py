@@ -72,6 +72,19 @@ def test_corners_are_where_the_curves_break():
     assert shape_of(pulse("half-sine")).corners == pytest.approx([0.1, 0.14])
 
 
+@pytest.mark.parametrize("name", FORMULAS)
+def test_curves_too_short_for_the_step_are_crossed_in_ten(name):
+    """A half-sine within one step is zero at both of its ends: it must not be stepped over."""
+    forces = event_forces([pulse(name)], joints=1)
+    curved = name in ("half-sine", "versed-sine", "blast")
+    short = forces.landings(T / 9.9)
+    assert short.size == (11 if curved else shape_of(pulse(name)).corners.size)
+    assert short[[0, -1]] == pytest.approx([START, START + T])
+    if curved:
+        assert np.diff(short) == pytest.approx(np.full(10, T / 10))
+    assert forces.landings(T / 10) == pytest.approx(shape_of(pulse(name)).corners)
+
+
 def test_trapezoid_without_flat_rise_or_fall():
     """The three degenerate trapezoids are a triangle, a falling and a rising sawtooth."""
     full = Pulse("p", "trapezoid", T, 0.0, (), rise=T / 2, fall=T / 2)
@@ -104,5 +117,5 @@ def test_forces_of_several_events_add_up():
     two = Pulse("b", "ramp", T, 0.0, (((2,), (0.0, 0.0, -4.0)),))
     forces = event_forces([one, two], joints=3).at(T / 2, T / 2)
     assert pytest.approx(np.array([[3.0, 0, 0], [0, 0, 0], [3.0, 1.0, -2.0]])) == forces.T
-    assert event_forces([one, two], 3).corners() == pytest.approx([0.0, T])
+    assert event_forces([one, two], 3).landings(T) == pytest.approx([0.0, T])
     assert (event_forces([], 3).at(0.1, 0.1) == np.zeros((3, 3))).all()

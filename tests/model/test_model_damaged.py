@@ -6,6 +6,7 @@ import copy
 import tomllib
 from typing import Any
 
+from footbridge_text import FOOTBRIDGE
 from gantry_text import GANTRY
 from hypothesis import given, settings
 from hypothesis import strategies as st
@@ -15,7 +16,23 @@ from tautbar.model import Model
 from tautbar.model.reading import model_from_text
 
 numbers = (0, -1, 1.5, float("nan"), float("inf"), True)
-texts = ("", "A", "dead", "12 mm", "3 kN", "*", "@", "as drawn", "x\ny", "auto")
+texts = (
+    "",
+    "A",
+    "low",
+    "each",
+    "none",
+    "back",
+    "handrail",
+    "dead",
+    "12 mm",
+    "3 kN",
+    "*",
+    "@",
+    "as drawn",
+    "x\ny",
+    "auto",
+)
 lists = ([], [1], [0, 0], ["A"], ["A", "C"], [[]], [{}])
 tables = ({}, {"a": 1}, {"name": "m"}, {"analysis": "strength"})
 junk = st.sampled_from([*numbers, *texts, *lists, *tables])
@@ -40,7 +57,7 @@ def _change(words: Any, path: tuple[Any, ...], value: Any, how: str) -> None:
 @settings(max_examples=400, deadline=None)
 @given(data=st.data())
 def test_a_damaged_model_is_answered_in_words(data: st.DataObject) -> None:
-    words = copy.deepcopy(tomllib.loads(GANTRY))
+    words = tomllib.loads(data.draw(st.sampled_from([GANTRY, FOOTBRIDGE])))
     for _ in range(data.draw(st.integers(1, 3))):
         path = data.draw(st.sampled_from(_places(words)))
         _change(

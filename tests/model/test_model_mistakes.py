@@ -5,8 +5,10 @@ from __future__ import annotations
 from pathlib import Path
 
 import pytest
+from footbridge_text import FOOTBRIDGE
 from planted import IN_LOADS, IN_STRUCTURE
 from planted_in_analyses import IN_ANALYSES, IN_TYPES
+from planted_statics import IN_STATICS
 
 from tautbar.errors import Mistake, ModelError
 from tautbar.model import Model, read_model
@@ -26,8 +28,20 @@ MISTAKES = IN_STRUCTURE | IN_LOADS | IN_ANALYSES | IN_TYPES
 def test_a_mistake_is_told_with_its_place(
     gantry: str, old: str, new: str, caret: str, path: str, says: str
 ) -> None:
-    assert old in gantry, "the good file has changed"
-    text = gantry.replace(old, new, 1)
+    assert_told(gantry, old, new, caret, path, says)
+
+
+@pytest.mark.parametrize(("old", "new", "caret", "path", "says"), IN_STATICS.values(), ids=IN_STATICS.keys())
+def test_a_mistake_in_the_footbridge_is_told_with_its_place(
+    old: str, new: str, caret: str, path: str, says: str
+) -> None:
+    assert_told(FOOTBRIDGE, old, new, caret, path, says)
+
+
+def assert_told(good: str, old: str, new: str, caret: str, path: str, says: str) -> None:
+    """The mistake is told once, and its line and column are where it was planted."""
+    assert old in good, "the good file has changed"
+    text = good.replace(old, new, 1)
     found = mistakes_in(text)
     told = [m for m in found if m.path == path and says in f"{m.what} ({m.hint})"]
     assert told, "\n".join(map(str, found))
@@ -44,7 +58,7 @@ def test_all_planted_mistakes_are_told_at_once_in_the_order_of_the_file(gantry: 
         "key",
         "joint",
         "joint in chain",
-        "hanging without pieces",
+        "hanging without length",
         "unit",
         "named twice",
         "movement across",
@@ -181,6 +195,12 @@ SLIPS = {
     "bare text": ('kind = "modes"', "kind = modes", "put text in quotes"),
     "colon": ("count = 12", "count: 12", "write = between key and value"),
     "open quote": ('kind = "modes"', 'kind = "modes', ""),
+    "round brackets": ("A = [0, 0]", "A = (0, 0)", "square brackets"),
+    "semicolon": ("A = [0, 0]", "A = [0; 0]", "with commas"),
+    "curly quotes": ('kind = "modes"', "kind = “modes”", "straight quotes"),
+    "open bracket": ("[combinations]", "[combinations", "close the brackets"),
+    "open brackets": ("[[masses]]", "[[masses]", "close the brackets"),
+    "last comma": ("lanterns = 1.0 }", "lanterns = 1.0, }", "comma before the closing brace"),
 }
 
 
@@ -193,10 +213,68 @@ def test_slips_in_toml_get_their_own_hint(gantry: str, old: str, new: str, says:
     assert new in mistake.source_line
 
 
-def test_a_table_given_twice_is_a_name_used_twice(gantry: str) -> None:
-    (mistake,) = mistakes_in(gantry + "\n[sections.stay]\n")
-    assert "a name is used twice" in mistake.what
-    assert mistake.line == gantry.count("\n") + 2
+ONE_TABLE = "put its keys into one table, or give one of them another name"
+TWICE = {  # what, instead of what, the line of the second, what is said, and the hint
+    "table": (
+        "[load_cases.cold]",
+        "[load_cases.dead]",
+        "[load_cases.dead]",
+        "[load_cases.dead] is there twice, first in line 80",
+        ONE_TABLE,
+    ),
+    "inline table": (
+        "[load_cases.dead]",
+        "[load_cases]\ncold = {}\n[load_cases.dead]",
+        "[load_cases.cold]",
+        "[load_cases.cold] is there twice, first in line 81",
+        ONE_TABLE,
+    ),
+    "key": (
+        'name = "top"',
+        'name = "top"\n  name = "roof"',
+        '  name = "roof"',
+        "'name' is there twice, first in line 50",
+        "leave one out, or begin another [[members]] before it",
+    ),
+    "long value": (
+        "D = [0,",
+        "B = [\n 0,",
+        "B = [",
+        "'B' is there twice, first in line 32",
+        "leave one out",
+    ),
+    "key in braces": (
+        "{ dead = 1.0, lanterns = 1.0 }",
+        "{ dead = 1.0, dead = 2 }",
+        "service = { dead = 1.0, dead = 2 }",
+        "'dead' is there twice in these braces",
+        "leave one out",
+    ),
+    "list of tables": (
+        "[[masses]]",
+        "[supports]",
+        "[supports]",
+        "[supports] is there already, in line 63",
+        "write [[supports]] above each of them",
+    ),
+    "closed table": (
+        "[combinations.strength]",
+        "[combinations.service.cold]",
+        "[combinations.service.cold]",
+        "[combinations.service.cold] cannot add to what line 104 says already",
+        "write all of it in one place",
+    ),
+}
+
+
+@pytest.mark.parametrize(("old", "new", "line", "says", "hint"), TWICE.values(), ids=TWICE.keys())
+def test_what_stands_twice_is_named_with_both_lines(
+    gantry: str, old: str, new: str, line: str, says: str, hint: str
+) -> None:
+    text = gantry.replace(old, new, 1)
+    (mistake,) = mistakes_in(text)
+    assert (mistake.what, mistake.hint, mistake.source_line) == (says, hint, line)
+    assert text.splitlines()[mistake.line - 1] == line
 
 
 def test_a_file_that_ends_too_early(gantry: str) -> None:
@@ -221,3 +299,67 @@ def test_a_part_that_hangs_on_an_unknown_joint_is_not_called_loose() -> None:
     said = [m.what for m in mistakes_in(text)]
     assert "there is no joint 'Q'" in said
     assert not any("not connected" in what for what in said)
+
+
+def test_a_name_of_two_things_must_be_told_apart() -> None:
+    text = FOOTBRIDGE.replace('name = "prop"', 'name = "back"').replace('["prop"', '["back"')
+    told = {m.path: m.what for m in mistakes_in(text)}
+    assert told['analysis "bare": with[1]'] == "'back' is a member and a support"
+
+
+def test_a_load_case_without_loads_cannot_grow() -> None:
+    text = FOOTBRIDGE.replace("[load_cases.dead]", "[load_cases.idle]\nself_weight = 0\n[load_cases.dead]")
+    (mistake,) = mistakes_in(text.replace("loads = { crowd = 2 }", 'loads = "idle"'))
+    assert mistake.path == 'analysis "critical": loads'
+    assert "nothing acts in it, whatever the load factor" in mistake.what
+    weather = text.replace("self_weight = 0", 'ice = [ { members = ["post"], thickness = 1, density = 9 } ]')
+    assert model_from_text(weather.replace("loads = { crowd = 2 }", 'loads = "idle"'))
+
+
+def test_forces_of_zero_cannot_grow() -> None:
+    text = FOOTBRIDGE.replace("force = [0, -8]", "force = [0, 0]")
+    told = [m.path for m in mistakes_in(text) if "no load grows" in m.what]
+    assert told == ['analysis "collapse": loads', 'analysis "critical": loads']
+
+
+@pytest.mark.parametrize("name", ["handrail.1", "handrail.8"])
+def test_names_of_pieces_are_kept_free_from_the_first_to_the_last(name: str) -> None:
+    """The analyses part the handrail in 8; a ninth piece there is none."""
+    other = f'name = "{name}"\nfrom = "foot-1"\nto = "low"\nsection = "post"\n\n[[members]]\nname = "post"'
+    text = FOOTBRIDGE.replace('name = "post"', other).replace('["post"], value', f'["post", "{name}"], value')
+    said = [m.what for m in mistakes_in(text)]
+    assert said == [f"the name '{name}' is that of a piece, but is used already"] * 2
+    assert model_from_text(text.replace(name, "handrail.9"))
+
+
+def test_a_joint_may_not_have_the_name_of_one_between_pieces() -> None:
+    said = [m.what for m in mistakes_in(FOOTBRIDGE.replace("foot-1", '"handrail@7"').replace('""', '"'))]
+    assert said == ["the name 'handrail@7' is that of a piece, but is used already"] * 2
+
+
+def test_struts_cannot_be_kept_taut() -> None:
+    text = FOOTBRIDGE.replace('name = "post"\n', 'name = "post"\nkind = "compression-only"\n')
+    (mistake,) = mistakes_in(text.replace('keep_taut = ["back",', 'keep_taut = ["post",'))
+    assert mistake.what == "'post.1', 'post.2': compression-only, so never taut"
+
+
+def test_a_rope_is_not_stretched_by_many_times_its_length() -> None:
+    """A pull of 2 kN on EA = 0.1 kN would be a strain of 20."""
+    soft = FOOTBRIDGE.replace('breaking_force = "400 kN"\n', "").replace('"20 MN"', '"0.1 kN"')
+    (mistake,) = mistakes_in(soft.replace('sag = "1.2 m"', 'pretension = "2 kN"'))
+    assert mistake.what == "as drawn it would be stretched by 20 times its length"
+
+
+def test_marking_at_another_temperature_needs_expansion() -> None:
+    bare = FOOTBRIDGE.replace('expansion = "12e-6 / K"\nbreaking', "breaking", 1)
+    told = {m.path: m.what for m in mistakes_in(bare)}
+    assert told['analysis "tensions": cut_list.temperature'].endswith("the section has no expansion")
+
+
+def test_lengths_of_ropes_put_in_later_are_not_judged_as_drawn() -> None:
+    """Joints have moved by then: a length that would break the rope as drawn may be right."""
+    later = FOOTBRIDGE.replace('slack = "0.2 m"', 'unstressed_length = "9 m"')  # 9.49 m as drawn: 1.1 MN
+    assert model_from_text(later)
+    found = mistakes_in(later.replace("absent = true\n\n[[members]]", "\n[[members]]"))
+    (told,) = [m for m in found if m.path == 'member "hoist-line": unstressed_length']
+    assert "less than possible" in told.what

@@ -188,7 +188,10 @@ def test_a_model_does_not_change_and_can_be_pickled(gantry_file: Path) -> None:
 def test_the_largest_quantities_are_echoed_as_understood(gantry: str) -> None:
     assert model_from_text(gantry).echo == (
         "largest force: 40 kN (event 'drop')",
-        "longest member: 5.657 m (top.1)",
+        "largest line load: 20 N/m (load case 'lanterns')",
+        "longest member: 7.211 m (main-rope)",
+        "largest take-up: 8 mm ('stay-1' in load case 'tightening')",
+        "largest movement: 12 mm (joint 'A' in load case 'settlement')",
         "largest mass: 120 kg (joint 'C')",
     )
 

@@ -7,10 +7,12 @@ from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
+from footbridge_text import FOOTBRIDGE
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from tautbar.model import Model, read_model
+from tautbar.model.reading import model_from_text
 from tautbar.model.writing import to_toml
 
 
@@ -20,6 +22,11 @@ def test_the_gantry_comes_back(gantry_file: Path) -> None:
     assert again.parts == model.parts
     assert Model(**model.words).parts == model.parts
     assert tomllib.loads(again.text) == dict(model.words)
+
+
+def test_the_footbridge_comes_back() -> None:
+    model = model_from_text(FOOTBRIDGE)
+    assert Model(**tomllib.loads(model.to_toml())).parts == model.parts
 
 
 def test_parts_differ_where_a_single_value_does(gantry_file: Path) -> None:

@@ -8,6 +8,7 @@ import tomllib
 from typing import Any
 
 import pytest
+from footbridge_text import FOOTBRIDGE
 
 from tautbar.model import spec as s
 from tautbar.model.format import MODEL
@@ -73,8 +74,9 @@ def test_it_is_a_draft_07_schema_with_numeric_bounds() -> None:
     assert '"exclusiveMinimum": true' not in text
 
 
-def test_it_takes_the_gantry(gantry: str) -> None:
+def test_it_takes_the_gantry_and_the_footbridge(gantry: str) -> None:
     assert fits(schema(), tomllib.loads(gantry))
+    assert fits(schema(), tomllib.loads(FOOTBRIDGE))
 
 
 @pytest.mark.parametrize(
@@ -96,6 +98,26 @@ def test_it_takes_the_gantry(gantry: str) -> None:
 def test_it_refuses_slips(gantry: str, old: str, new: str) -> None:
     assert old in gantry
     assert not fits(schema(), tomllib.loads(gantry.replace(old, new, 1)))
+
+
+@pytest.mark.parametrize(
+    ("old", "new"),
+    [
+        ('only_pushes = "z"', 'only_pushes = "up"'),
+        ("rope = true", 'rope = "yes"'),
+        ('["4 m", "0.8 kPa"]', '["4 m"]'),
+        ('thickness = "20 mm"', "thickness = 0"),
+        ("stop_at =", "stop_when ="),
+        ('at = "to end"', 'at = "top"'),
+        ('adjust = ["back"]', "adjust = []"),
+        ("{ marking_tension", "{ marking"),
+        ('value = "4 kN/m"', "worth = 4"),
+        ("pieces = 8", "pieces = 1"),
+    ],
+)
+def test_it_refuses_slips_in_the_footbridge(old: str, new: str) -> None:
+    assert old in FOOTBRIDGE
+    assert not fits(schema(), tomllib.loads(FOOTBRIDGE.replace(old, new, 1)))
 
 
 def _described(spec: s.Spec, rule: dict[str, Any], path: str = "") -> None:

@@ -117,7 +117,7 @@ def test_bad_joint_rows(old: str, new: str, line: int, caret: str, path: str, sa
         ("s,5,", 's,"5 m",', 3, '"5 m"', 'member "m.2": pretension', "a force is wanted"),
         ("hanging,s,3,4", "hanging,s,3,four", 6, "four", 'member "rope": pieces', "not 'four'"),
         ("hanging,s,3,4", "hanging,s,3,1", 6, "1", 'member "rope": pieces', "from 2 to 10000"),
-        ("hanging,s,3,4", "hanging,s,3,", 6, "rope", 'member "rope"', "needs pieces in this version"),
+        ("hanging,s,3,4", "hanging,s,,", 6, "rope", 'member "rope"', "must say how long it is"),
         ("hanging,s,3,4,", "hanging,s,3,4,-5", 6, "-5", 'member "rope": sag', "must be above 0, is -5"),
         (
             "hanging,s,3,4,",
@@ -181,6 +181,29 @@ def test_a_pulse_may_be_a_table_in_a_file(tmp_path: Path, gantry: str) -> None:
     assert mistake.file == str(tmp_path / "pulse.csv")
 
 
+OF_ALL = """
+[load_cases.gale]
+wind = [ { members = ["*"], toward = [1, 0, 0], pressure = 1 } ]
+[[analyses]]
+name = "shape"
+kind = "form-finding"
+loads = "gale"
+without = ["m.1"]
+force_densities = [ { members = ["*"], value = 1 } ]
+[[analyses]]
+name = "lengths"
+kind = "tune"
+loads = "gale"
+adjust = ["*"]
+targets = [ { members = ["*"], tension = 1 } ]
+[[analyses]]
+name = "losses"
+kind = "static"
+loads = "gale"
+lose_in_turn = ["*"]
+"""
+
+
 def test_a_large_grid_is_read_and_checked_whole() -> None:
     """About 38,000 rows: the counts are those of a cubic grid, worked out by hand."""
     n = 22
@@ -192,11 +215,14 @@ def test_a_large_grid_is_read_and_checked_whole() -> None:
         for a, b, c in ((i + 1, j, k), (i, j + 1, k), (i, j, k + 1)):
             if max(a, b, c) < n:
                 members.append(f"m.{len(members)},{name(i, j, k)},{name(a, b, c)},bar,s")
-    head = HEAD.replace('["a"]', '["J*-*-0"]')
+    head = HEAD.replace('["a"]', '["J*-*-0"]').replace("_length = 2", "_length = 2\nwind_width = 1") + OF_ALL
     model = read("\n".join(joints), "\n".join(members), head)
     assert len(model.parts.joints) == n**3
     assert len(model.parts.members) == 3 * n * n * (n - 1)
     assert len(model.parts.supports[0].joints) == n * n
+    shape, lengths, losses = model.parts.analyses
+    assert len(shape.force_densities[0][0]) == len(model.parts.members) - 1
+    assert len(lengths.targets[0].members) == len(losses.lose_in_turn) == len(model.parts.members)
     assert sum(model.parts.joints.x) == pytest.approx(n * n * sum(i + 0.5 for i in range(n)))
     bad = "\n".join(members).replace(name(21, 21, 21), name(21, 21, 99))
     with pytest.raises(ModelError) as caught:

@@ -23,7 +23,7 @@ def follow(times, looseness, force, can_slack=None) -> SlackEpisodes:
 def test_instants_are_where_the_looseness_crosses_zero() -> None:
     slack = follow([0.0, 1.0, 2.0, 3.0], [-1.0, 3.0, 1.0, -1.0], [5.0, 0.0, 0.0, 8.0])
     # -1 to 3 crosses a quarter of the way; 1 to -1 half-way
-    assert slack.episodes() == [(0, 0.25, 2.5, 8.0)]
+    assert slack.episodes() == [(0, 0.25, 2.5, 8.0, 3.0)]
     assert slack.share().tolist() == [2.25 / 3.0]
 
 
@@ -31,16 +31,26 @@ def test_snatch_is_the_greatest_force_until_it_goes_slack_again() -> None:
     looseness = [1.0, -1.0, -1.0, 1.0, -1.0, -1.0]
     slack = follow(range(6), looseness, [0.0, 4.0, 9.0, 99.0, 2.0, 1.0])
     # the force while slack (99, which a mechanics would never give) does not count
-    assert [(e[1], e[2], e[3]) for e in slack.episodes()] == [(0.0, 0.5, 9.0), (2.5, 3.5, 2.0)]
+    assert [e[1:] for e in slack.episodes()] == [(0.0, 0.5, 9.0, 2.0), (2.5, 3.5, 2.0, 4.0)]
 
 
 def test_slack_to_the_end_has_no_end_and_no_snatch() -> None:
     slack = follow([0.0, 1.0, 2.0], [-1.0, 1.0, 1.0], [7.0, 0.0, 0.0])
-    ((member, start, end, snatch),) = slack.episodes()
+    ((member, start, end, snatch, when),) = slack.episodes()
     assert (member, start) == (0, 0.5)
     assert np.isnan(end)
     assert np.isnan(snatch)
+    assert np.isnan(when)
     assert slack.share().tolist() == [0.75]
+
+
+def test_the_axis_of_members_can_be_another() -> None:
+    fields = follow([0.0, 1.0], [1.0, 1.0], [0.0, 0.0]).fields("member_with_pieces")
+    assert fields["slack_share"].axes == ("member_with_pieces",)
+
+
+def test_a_snatch_without_force_comes_when_the_tie_tightens() -> None:
+    assert follow([0.0, 1.0], [1.0, -1.0], [0.0, 0.0]).episodes() == [(0, 0.0, 0.5, 0.0, 0.5)]
 
 
 def test_looseness_of_exactly_zero_is_taut() -> None:
@@ -78,6 +88,7 @@ def test_fields_without_an_episode_have_no_rows() -> None:
         "slack/start": (0,),
         "slack/end": (0,),
         "slack/snatch_force": (0,),
+        "slack/time_of_snatch": (0,),
         "slack_share": (1,),
     }
     assert fields["slack/member"].values.dtype == np.int64
@@ -90,15 +101,15 @@ WALKS = arrays(float, st.tuples(st.integers(1, 15), st.integers(1, 4)), elements
 def test_episodes_are_those_of_a_plain_loop(looseness: np.ndarray) -> None:
     times = 0.1 * np.arange(len(looseness))
     force = np.where(looseness > 0.0, 0.0, 1.0 - looseness)
-    found = np.array(follow(times, looseness, force).episodes()).reshape(-1, 4)
+    found = np.array(follow(times, looseness, force).episodes()).reshape(-1, 5)
     plain = [
         row for member in range(looseness.shape[1]) for row in plain_loop(member, times, looseness, force)
     ]
     # same arithmetic in both, so equal to the last bit
-    np.testing.assert_array_equal(found, np.array(sorted(plain, key=lambda r: (r[1], r[0]))).reshape(-1, 4))
+    np.testing.assert_array_equal(found, np.array(sorted(plain, key=lambda r: (r[1], r[0]))).reshape(-1, 5))
 
 
-def plain_loop(member, times, looseness, force) -> list[tuple[int, float, float, float]]:
+def plain_loop(member, times, looseness, force) -> list[tuple[int, float, float, float, float]]:
     """Episodes of one member by scanning its whole history."""
     a, f, rows = looseness[:, member], force[:, member], []
     k = 0
@@ -110,12 +121,13 @@ def plain_loop(member, times, looseness, force) -> list[tuple[int, float, float,
         while k < len(a) and a[k] > 0.0:
             k += 1
         if k == len(a):
-            rows.append((member, start, np.nan, np.nan))
+            rows.append((member, start, np.nan, np.nan, np.nan))
             break
         taut = k
         while k < len(a) and a[k] <= 0.0:
             k += 1
-        rows.append((member, start, crossing(times, a, taut), np.abs(f[taut:k]).max()))
+        hardest = taut + np.abs(f[taut:k]).argmax()
+        rows.append((member, start, crossing(times, a, taut), np.abs(f[hardest]), times[hardest]))
     return rows
 
 

@@ -7,6 +7,7 @@ import numpy as np
 import structures
 from tautbar.analyses.context import Context
 from tautbar.mechanics.damping import Rayleigh
+from tautbar.mechanics.loads import nothing
 from tautbar.mechanics.product import Product
 from tautbar.mechanics.pulses import event_forces
 from tautbar.solvers.march import march
@@ -14,22 +15,22 @@ from tautbar.solvers.motion import Motion, damper_blocks
 
 
 def motion_of(description, loads=None, lumped=True, rayleigh=(0.0, 0.0), small=False):
-    """The context and the motion under one loading (none: nothing acts) about the drawing."""
+    """The scene and the motion under one loading (none: nothing acts) about the drawing."""
     parts = structures.build(description).parts
-    context = Context(parts)
-    system = context.system
-    acting = context.acting(parts.loadings[loads][0]) if loads else context.drawn().acting
-    potential = context.potential(acting, small)
+    scene = Context(parts).first_scene()
+    system = scene.system
+    acting = scene.acting(parts.loadings[loads][0]) if loads else nothing(scene.structure)
+    potential = scene.potential(acting, small)
     look = potential.look(np.zeros(system.n))
     blocks = damper_blocks(potential.springs, look.stretch, look.axial, rayleigh[1], small)
     pulses = list(parts.events.values())
-    return context, Motion(
+    return scene, Motion(
         system=system,
         springs=potential.springs,
-        held=context.held(acting),
+        held=scene.held(acting),
         dead=potential.force,
         events=event_forces(pulses, system.structure.joints),
-        joint_mass=Product(system.joint_mass(acting.mass, lumped)),
+        joint_mass=Product(system.joint_mass(acting, lumped)),
         rayleigh=Rayleigh(*rayleigh),
         damper_blocks=blocks,
         small=small,

@@ -13,18 +13,18 @@ from tautbar.solvers.newmark import Newmark
 
 def thrown():
     """A slack net thrown, tumbling and shaken, so that its ties snap again and again."""
-    context, motion = motion_of(structures.tumbling_net())
-    s = context.system.structure
+    scene, motion = motion_of(structures.tumbling_net())
+    s = scene.structure
     rng = np.random.default_rng(11)
     spin = np.array([0.8, -0.5, 1.2])
     centred = s.position - s.position.mean(axis=1, keepdims=True)
     V = np.cross(spin, centred.T).T + np.array([[2.0], [-1.0], [0.5]]) + 0.4 * rng.normal(size=(3, s.joints))
-    return context, motion, context.system.freedom.gather(V)
+    return scene, motion, scene.system.freedom.gather(V)
 
 
-def momenta(context, motion, steps):
+def momenta(scene, motion, steps):
     """Momentum (steps, 3) and angular momentum about the origin (steps, 3)."""
-    s, spread = context.system.structure, context.system.freedom.spread
+    s, spread = scene.structure, scene.system.freedom.spread
     p, h = [], []
     for step in steps:
         X, mv = s.position + spread(step.state.q), (motion.joint_mass @ spread(step.state.v).T).T
@@ -38,9 +38,9 @@ def drift(values):
 
 
 def check(steps_taken, limit):
-    context, motion, v = thrown()
+    scene, motion, v = thrown()
     steps = run(motion, EnergyConserving(capture=False), v, 2e-3 * np.arange(steps_taken + 1))
-    p, h = momenta(context, motion, steps)
+    p, h = momenta(scene, motion, steps)
     E = np.array([energy(motion, step) for step in steps])
     slack = np.array([step.axial == 0 for step in steps])
     assert (slack[1:] != slack[:-1]).sum() > 100, "ties must snap and go slack many times"
@@ -61,9 +61,9 @@ def test_a_tumbling_slack_net_keeps_everything_for_long():
 
 
 def test_capture_takes_energy_never_gives_and_keeps_both_momenta():
-    context, motion, v = thrown()
+    scene, motion, v = thrown()
     steps = run(motion, EnergyConserving(capture=True), v, 2e-3 * np.arange(1001))
-    p, h = momenta(context, motion, steps)
+    p, h = momenta(scene, motion, steps)
     E = np.array([energy(motion, step) for step in steps])
     assert drift(p) < 1e-9
     assert drift(h) < 1e-9
@@ -105,10 +105,10 @@ def test_a_net_under_weight_closes_its_ledger_at_any_step(omega_dt):
     described = structures.tumbling_net(n=4)
     described["gravity"] = 9.81
     described["supports"] = [structures.held("J00", "J30", "J03")]
-    context, motion = motion_of(described, "dead")
-    s = context.system.structure
+    scene, motion = motion_of(described, "dead")
+    s = scene.structure
     fastest = 2 * np.sqrt((s.EA / s.L0).max() / 1.0)
-    steps = run(motion, EnergyConserving(), np.zeros(context.system.n), omega_dt / fastest * np.arange(101))
+    steps = run(motion, EnergyConserving(), np.zeros(scene.system.n), omega_dt / fastest * np.arange(101))
     E = np.array([energy(motion, step) for step in steps])
     lost = np.cumsum([step.dissipated for step in steps])
     over = max(motion.kinetic(x.state.v) + motion.strain(x.state.q, x.stretch) for x in steps)

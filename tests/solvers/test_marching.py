@@ -13,7 +13,7 @@ from tautbar.solvers.motion import StepNotConverged
 
 
 def motion_with(*corners):
-    return SimpleNamespace(events=SimpleNamespace(corners=lambda: np.array(corners, dtype=float)))
+    return SimpleNamespace(events=SimpleNamespace(landings=lambda _step: np.array(corners, dtype=float)))
 
 
 class Recorder:

@@ -16,8 +16,8 @@ TOLERANCE = 1e-9
 
 def potential_of(described, loads="dead"):
     parts = structures.build(described).parts
-    context = Context(parts)
-    return context, context.potential(context.acting(parts.loadings[loads][0]))
+    scene = Context(parts).first_scene()
+    return scene, scene.potential(scene.acting(parts.loadings[loads][0]))
 
 
 def slack_net(seed):
@@ -34,8 +34,8 @@ def test_a_slack_net_finds_the_one_minimum_of_its_energy(seed):
 
     It is asked for 1e-9 of the gradient and stops where energies of some 10 J stop to differ.
     """
-    context, potential = potential_of(slack_net(seed))
-    found = find_equilibrium(potential, np.zeros(context.system.n), TOLERANCE)
+    scene, potential = potential_of(slack_net(seed))
+    found = find_equilibrium(potential, np.zeros(scene.system.n), TOLERANCE)
     assert found.converged
     assert count_pivots(potential, found.look).negative == 0
     away = found.q + 0.1 * np.random.default_rng(seed).normal(size=found.q.size)
@@ -64,8 +64,8 @@ def test_chains_of_all_stiffnesses_are_found_from_cold():
             sections={"s": {"axial_stiffness": 10.0**power, "mass_per_length": 1.0}},
             supports=[structures.held("J0", "J10")],
         )
-        context, potential = potential_of(described)
-        found = find_equilibrium(potential, np.zeros(context.system.n), TOLERANCE)
+        scene, potential = potential_of(described)
+        found = find_equilibrium(potential, np.zeros(scene.system.n), TOLERANCE)
         assert found.converged
         # Hand statics of the half chain: level pull constant, upward pull the weight of what hangs on it.
         ends = found.look.axial * found.look.stretch.n
@@ -103,11 +103,11 @@ def braced_tower(storeys=4):
 
 def test_a_braced_tower_stays_a_tower():
     """Graded stiffness ends upside down here in a stable balance (measured 20 of 20); this road must not."""
-    context, potential = potential_of(braced_tower(), "wind")
-    found = find_equilibrium(potential, np.zeros(context.system.n), TOLERANCE)
+    scene, potential = potential_of(braced_tower(), "wind")
+    found = find_equilibrium(potential, np.zeros(scene.system.n), TOLERANCE)
     assert found.converged
     assert count_pivots(potential, found.look).negative == 0
-    moved = context.system.greatest_joint_move(found.q)
+    moved = scene.system.greatest_joint_move(found.q)
     # Slack of 4 mm in four storeys of diagonals at 34 degrees lets the top sway by some 4 x 4.8 mm.
     assert 0.005 < moved < 0.1
 
@@ -140,17 +140,17 @@ def test_what_must_fall_falls_by_creep_to_the_nearest_rest():
 
     An over-damped fall lays it over by its own height, which later audits call folded.
     """
-    context, potential = potential_of(two_storey_mast())
-    found = find_equilibrium(potential, np.zeros(context.system.n), TOLERANCE)
+    scene, potential = potential_of(two_storey_mast())
+    found = find_equilibrium(potential, np.zeros(scene.system.n), TOLERANCE)
     assert found.converged
     assert found.road == "creep, then Newton"
     assert count_pivots(potential, found.look).negative == 0
-    assert context.system.greatest_joint_move(found.q) < 12.0
+    assert scene.system.greatest_joint_move(found.q) < 12.0
 
 
 def test_the_energy_never_rises_on_the_way():
-    context, potential = potential_of(braced_tower(), "wind")
-    q, energies = np.zeros(context.system.n), []
+    scene, potential = potential_of(braced_tower(), "wind")
+    q, energies = np.zeros(scene.system.n), []
     for _ in range(25):
         down = descend(potential, q, TOLERANCE, cap=0.02, limit=1)
         q = down.q
@@ -159,20 +159,20 @@ def test_the_energy_never_rises_on_the_way():
 
 
 def test_no_joint_moves_farther_than_the_cap_in_one_iteration():
-    context, potential = potential_of(slack_net(3))
-    down = descend(potential, np.zeros(context.system.n), TOLERANCE, cap=0.05, limit=1)
-    size = context.system.structure.size
-    assert context.system.greatest_joint_move(down.q) <= 0.05 * size * (1 + 1e-9)
+    scene, potential = potential_of(slack_net(3))
+    down = descend(potential, np.zeros(scene.system.n), TOLERANCE, cap=0.05, limit=1)
+    size = scene.structure.size
+    assert scene.system.greatest_joint_move(down.q) <= 0.05 * size * (1 + 1e-9)
 
 
 def test_newton_is_quadratic_near_equilibrium():
     """By the steps, not the residuals, whose first one is all axial: each step is the square of the last."""
-    context, potential = potential_of(structures.mixed(), "all")
-    q = find_equilibrium(potential, np.zeros(context.system.n), 1e-12).q
+    scene, potential = potential_of(structures.mixed(), "all")
+    q = find_equilibrium(potential, np.zeros(scene.system.n), 1e-12).q
     near, steps = q + 1e-2 * np.cos(np.arange(q.size)), []
     for _ in range(7):
         look = potential.look(near)
-        step = context.system.solver.cholesky(potential.curvature(look)).solve(look.residual)
+        step = scene.system.solver.cholesky(potential.curvature(look)).solve(look.residual)
         steps.append(np.abs(step).max())
         near = near + step
     tail = [s for s in steps if s > 1e-12][-3:]
@@ -190,16 +190,16 @@ def test_a_saddle_is_left_to_both_sides_downhill():
         ],
         sections={"s": {"axial_stiffness": 2e6, "mass_per_length": 0.0}},
         supports=[structures.held("A", "B"), {"joints": ["C"], "fixed": ["y"]}],
-        load_cases={"none": {"forces": [{"joints": ["C"], "force": [0, 0, 0]}]}},
+        load_cases={"rest": {"forces": [{"joints": ["C"], "force": [0, 0, 0]}]}},
     )
-    context, potential = potential_of(described, "none")
+    scene, potential = potential_of(described, "rest")
     look = potential.look(np.zeros(2))
     assert look.imbalance == 0
     assert count_pivots(potential, look).negative == 1
     sides = leave_saddle(potential, look, TOLERANCE)
     assert len(sides) == 2
     height = np.sqrt((1 / (1 - 0.01)) ** 2 - 1)  # where both bars have their unstressed length
-    rise = sorted(float(context.system.freedom.spread(n.descent.q)[2, 2]) for n in sides)
+    rise = sorted(float(scene.system.freedom.spread(n.descent.q)[2, 2]) for n in sides)
     assert rise == pytest.approx([-height, height], rel=1e-6)
     stored = 2 * 2e4**2 / (2 * 2e6 * 0.99) * 0.99**2 / 0.99
     assert [n.energy_below for n in sides] == pytest.approx([stored] * 2, rel=0.02)

@@ -31,8 +31,8 @@ class Case:
     """A step from a random state to a random increment, and the same in plain numbers."""
 
     def __init__(self, viscous, seed, lumped=False):
-        self.context, self.motion = motion_of(everything(viscous), "all", lumped, RAYLEIGH)
-        self.parts, self.system = self.context.parts, self.context.system
+        self.scene, self.motion = motion_of(everything(viscous), "all", lumped, RAYLEIGH)
+        self.parts, self.system = self.scene.parts, self.scene.system
         rng = np.random.default_rng(seed)
         n, J = self.system.n, self.system.structure.joints
         q, v, a = 0.05 * rng.normal(size=n), 3 * rng.normal(size=n), 100 * rng.normal(size=n)
@@ -45,11 +45,12 @@ class Case:
         force, move = plain.load_vector(self.parts, loading)
         P = plain.free_projector(self.parts)
         self.held = move.ravel() - P @ move.ravel()
-        self.load = self.T.T @ force.ravel()
+        springs = plain.stiffness(self.parts, [], plain.positions(self.parts))
+        self.load = self.T.T @ (force.ravel() - springs @ self.held)
         self.M = self.T.T @ np.kron(plain.mass_matrix(self.parts, loading, lumped), np.eye(3)) @ self.T
-        self.spring = self.T.T @ plain.stiffness(self.parts, [], plain.positions(self.parts)) @ self.T
+        self.spring = self.T.T @ springs @ self.T
         self.on = self.carrying(q)
-        self.C = RAYLEIGH[0] * self.M + RAYLEIGH[1] * self.drawn_stiffness()
+        self.C = RAYLEIGH[0] * self.M + RAYLEIGH[1] * (self.drawn_stiffness() + self.spring)
 
     def X(self, q):
         """Positions joint by joint, flat; q may be complex."""

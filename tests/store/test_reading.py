@@ -102,7 +102,7 @@ def test_peaks_are_a_table_over_every_computed_step(results) -> None:
 
 def test_slack_episodes_are_a_table_with_names(results) -> None:
     table = results["lantern dropped"].slack_episodes
-    assert table.dtype.names == ("member", "start", "end", "snatch_force")
+    assert table.dtype.names == ("member", "start", "end", "snatch_force", "time_of_snatch")
     assert set(table["member"].tolist()) <= {name for name in MAST.members if name.startswith("guy")}
     assert (table["end"] > table["start"]).all()
 
@@ -137,6 +137,14 @@ def test_paths_are_those_of_the_quantities(results) -> None:
         (lambda r: r["ringing"].peak("velocity"), 'no peaks in "ringing" of "velocity" (there is none)'),
         (lambda r: r["standing"].at("axial_force", joint="m0a"), 'has no axis "joint", only loading, member'),
         (lambda r: r.model("members/knd"), "(did you mean"),
+        (
+            lambda r: r["standing"].axial_force("guys"),
+            '"guys" is a group of 6 members, not one member; name one of guy-3-1, guy-3-2, guy-3-3, guy-6-1',
+        ),
+        (
+            lambda r: r["standing"].peak("axial_force"),
+            'has no peaks in time; its extremes over the loadings are in values("envelope/min")',
+        ),
     ],
 )
 def test_unknown_names_answer_with_the_nearest(results, ask, message) -> None:
@@ -144,6 +152,34 @@ def test_unknown_names_answer_with_the_nearest(results, ask, message) -> None:
         ask(results)
     assert message in str(told.value)
     assert told.value.exit_code == 2
+
+
+def test_a_result_can_be_gone_through(results) -> None:
+    result = results["ringing"]
+    assert list(result) == list(result.keys()) == list(result.paths())
+    assert {path: result[path].shape for path in result}["frequency"] == (2,)
+    assert dict(result)["shape"] == result["shape"]
+
+
+def test_names_of_an_axis_are_their_own_labels(results) -> None:
+    result = results["standing"]
+    assert result.axes("loading") == ("loading",)
+    assert result.labels("loading", 0) == ("dead", "dead + wind x", "dead + wind -x")
+
+
+def test_up_is_that_of_the_model(results) -> None:
+    assert results.up == 2
+
+
+@pytest.mark.parametrize(
+    ("words", "up"), [("", 2), ('up = "y"', 1), ('plane = "xy"', 1), ('plane = "xz"', 2), ('up = "x"', 0)]
+)
+def test_up_follows_the_words_of_the_model(path, tmp_path, words, up) -> None:
+    other = copy_of(path, tmp_path)
+    with h5py.File(other, "r+") as file:
+        file["provenance/model"][()] = words
+    with open_results(other) as results:
+        assert results.up == up
 
 
 def test_it_is_a_mapping(results) -> None:

@@ -78,5 +78,5 @@ def test_json_has_the_answers_and_no_not_a_number(tmp_path) -> None:
     assert modes["frequency_hz"] == [1.9, 4.7]
     assert "axial_force_n" not in modes
     row = history["slack"][0]
-    assert set(row) == {"member", "start_s", "end_s", "snatch_force_n"}
+    assert set(row) == {"member", "start_s", "end_s", "snatch_force_n", "time_of_snatch_s"}
     assert row["member"].startswith("guy-")

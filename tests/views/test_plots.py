@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from types import SimpleNamespace
 
 import numpy as np
 import pytest
@@ -15,8 +16,9 @@ from tautbar.errors import InputError
 from tautbar.records.fields import Field, Record
 from tautbar.store import open_results
 from tautbar.views.drawing import Drawing
-from tautbar.views.envelopes import envelope
-from tautbar.views.gallery import PLOTS, draw, list_plots, plots_of, save
+from tautbar.views.envelopes import bars, envelope
+from tautbar.views.gallery import draw, list_plots, plots_of, save
+from tautbar.views.slackness import _spell
 
 MAST = FakeMast()
 
@@ -59,17 +61,20 @@ def test_each_result_gives_the_plots_it_has_data_for(results) -> None:
     found = {name: set(plots_of(result)) for name, result in results.items()}
     assert found["standing"] == {"structure", "displaced", "forces"}
     assert found["ringing"] == {"structure", "mode"}
-    assert found["lantern dropped"] == set(PLOTS) - {"mode"}
+    assert found["lantern dropped"] == {"structure", "displaced", "history", "forces", "slack", "energy"}
 
 
 def test_the_list_names_plots_and_their_choices(results) -> None:
     text = list_plots(results)
     assert "ringing (modes, complete)\n  structure " in text
-    assert "  mode       shape of a mode [--mode --scale]\n" in text
+    assert "  mode        shape of a mode [--mode --scale --view]\n" in text
+    assert "coloured by axial force [--loading --scale --view]\n" in text  # a static analysis has no time
+    assert "coloured by axial force [--time --scale --view]\n" in text
     assert text.isascii()
 
 
-FILES = [(what, ending) for what in PLOTS for ending in (".png", ".svg")] + [
+OFTEN = ("structure", "displaced", "mode", "history", "forces", "slack", "energy")
+FILES = [(what, ending) for what in OFTEN for ending in (".png", ".svg")] + [
     ("history", ".pdf"),
     ("mode", ".pdf"),
 ]
@@ -202,9 +207,38 @@ def test_the_range_of_forces_shows_the_greatest_that_can_be_read(results) -> Non
     figure = draw(results["standing"], "forces")
     labels = [label.get_text() for label in axes_of(figure).get_yticklabels()]
     whole = envelope(results["standing"])
-    order = np.argsort(-np.maximum(np.abs(whole.low), np.abs(whole.high)), kind="stable")
-    assert labels == [whole.members[k] for k in order[:40]]
-    assert "the 40 of 60 members with the greatest" in words_of(figure)
+    size = np.maximum(np.abs(whole.low), np.abs(whole.high))
+    greatest = {g: max(size[whole.members.index(m)] for m in ms) for g, ms in results.groups.items()}
+    order = sorted(greatest, key=lambda group: -greatest[group])
+    assert labels == [f"{group} ({len(results.groups[group])})" for group in order]
+
+
+def test_the_range_of_forces_opens_a_group(results) -> None:
+    figure = draw(results["standing"], "forces", member="guys")
+    labels = [label.get_text() for label in axes_of(figure).get_yticklabels()]
+    assert sorted(labels) == sorted(results.groups["guys"])
+    assert "range of axial force of guys over 3 loadings" in words_of(figure)
+    assert "\ndead + wind x" in words_of(figure)  # what governs, beside a bar
+
+
+def test_what_governs_a_row_is_named(results) -> None:
+    row = next(bar for bar in bars(results["standing"]) if bar.name == "guys (6)")
+    force = np.array([MAST.forces(a) for a in (0.02, 0.35, -0.2)])[:, MAST.ties]
+    loading, guy = np.unravel_index(force.argmax(), force.shape)
+    assert (row.low, row.high) == (force.min(), force.max())
+    names = ["dead", "dead + wind x", "dead + wind -x"]
+    assert row.governing == f"{results.groups['guys'][guy]}, {names[loading]}"
+    over = next(bar for bar in bars(results["lantern dropped"], "guy-6-1"))
+    peak = results["lantern dropped"].peak("axial_force")
+    assert over.governing == f"at {peak[peak['member'] == 'guy-6-1']['time_of_max'][0]:.4g} s"
+
+
+def test_the_longest_bar_has_room_beyond_it(results) -> None:
+    axes = axes_of(draw(results["standing"], "forces"))
+    low, high = axes.get_xlim()
+    ends = [end for bar in axes.patches for end in (bar.get_x(), bar.get_x() + bar.get_width())]
+    assert low < min(ends) - 0.02 * (high - low)
+    assert high > max(ends) + 0.02 * (high - low)
 
 
 def test_the_slack_plot_has_a_bar_for_each_episode(results) -> None:
@@ -213,7 +247,31 @@ def test_the_slack_plot_has_a_bar_for_each_episode(results) -> None:
     episodes = result.slack_episodes
     bars = sum(len(c.get_paths()) for c in axes_of(figure).collections)
     assert bars == len(episodes)
-    assert f", {np.nanmax(episodes['snatch_force']) / 1e3:.1f} kN" in words_of(figure)
+    hardest = episodes[np.nanargmax(episodes["snatch_force"])]
+    words = f", {hardest['snatch_force'] / 1e3:.1f} kN at {hardest['time_of_snatch']:.4g} s"
+    assert words in words_of(figure)
+
+
+def test_a_group_in_the_slack_plot_is_shaded_by_how_many_were_slack() -> None:
+    """Three ties: one slack from 1 to 4 s, one from 2 to 3 s, one never; the bar beside them cannot be."""
+    kinds = [("bar", "web"), *[("tension-only", "web")] * 3]
+    names = ("b", "t1", "t2", "t3")
+    episodes = np.array(
+        [("t1", 1.0, 4.0, 5.0, 4.5), ("t2", 2.0, 3.0, 9.0, 3.5)],
+        dtype=[("member", "U8"), *((n, float) for n in ("start", "end", "snatch_force", "time_of_snatch"))],
+    )
+    model = SimpleNamespace(members=names, groups={"web": names}, model=lambda path: np.array(kinds)[:, 0])
+    result = SimpleNamespace(
+        members=names, ropes={}, results=model, members_of=lambda name: model.groups.get(name, ())
+    )
+    spell = _spell("web", episodes, 5.0, result)
+    assert spell.label == "web (3)"
+    assert list(zip(spell.start, spell.end, spell.share, strict=True)) == [
+        (1.0, 2.0, 1 / 3),
+        (2.0, 3.0, 2 / 3),
+        (3.0, 4.0, 1 / 3),
+    ]
+    assert (spell.time, spell.snatch, spell.snatch_time, spell.to_the_end) == (3.0, 9.0, 3.5, False)
 
 
 def test_slack_to_the_end_and_no_slack_are_said(tmp_path) -> None:
@@ -228,9 +286,11 @@ def test_the_energy_plot_has_what_there_is(results) -> None:
     result = results["lantern dropped"]
     figure = draw(result, "energy")
     by_name = {line.get_label(): line.get_ydata() for line in axes_of(figure).get_lines()}
-    assert "potential of loads, change" not in by_name  # it stays the same in this history
-    strain = result.values("energy/strain")
-    np.testing.assert_allclose(by_name["strain, change"], strain - strain[0], rtol=1e-15)
+    stored = result.values("energy/strain") + result.values("energy/load_potential")
+    both = by_name["strain and potential of loads, change"]
+    # the sum of two numbers of 50 to 900 J, rounded in another order
+    np.testing.assert_allclose(both, stored - stored[0], atol=1e-12)
+    assert both[0] == 0.0
     np.testing.assert_array_equal(by_name["work of events"], result.values("energy/event_work"))
     assert "greatest left over 4.00e-09 J" in words_of(figure)
 
@@ -270,12 +330,20 @@ def test_names_in_a_drawing_do_not_cover_each_other(results) -> None:
             {},
             '"ringing" (modes, complete) cannot give the plot "forces"; it can give struc',
         ),
-        ("ringing", "mode", {"joint": "m0a"}, 'plot "mode" has no choice "joint" (its choices: mode, scale)'),
+        (
+            "ringing",
+            "mode",
+            {"joint": "m0a"},
+            'plot "mode" has no choice "joint" (its choices: mode, scale, view)',
+        ),
+        ("ringing", "structure", {"view": "left"}, 'view "left": choose front, side, top, or azimuth'),
+        ("standing", "forces", {"member": "guy"}, 'no member or group "guy" (did you mean "guys"'),
+        ("lantern dropped", "slack", {"member": "legs"}, '"legs" is in the model, but "lantern dropped" has'),
         ("ringing", "mode", {"mode": 3}, 'mode 3: "ringing" has modes 1 to 2'),
         ("standing", "displaced", {"loading": "ded"}, 'no loading "ded" (did you mean "dead"'),
-        ("standing", "displaced", {"time": 1.0}, '"standing" has no time: choose a loading'),
+        ("standing", "displaced", {"time": 1.0}, '(static) has no choice "time": choose a loading'),
         ("lantern dropped", "displaced", {"time": 9.0}, "time 9 s is outside what was stored: 0 to 4 s"),
-        ("lantern dropped", "displaced", {"loading": "dead"}, "is a history: choose a time, not a loading"),
+        ("lantern dropped", "displaced", {"loading": "dead"}, 'has no choice "loading": choose a time'),
         ("lantern dropped", "history", {"joint": "m9"}, 'no joint "m9"'),
         (
             "lantern dropped",
@@ -315,14 +383,13 @@ def test_a_single_loading_has_bars_from_zero(tmp_path) -> None:
     record = static_record(MAST)
     one = {k: replace(f, values=f.values[:1]) for k, f in record.fields.items()}
     with open_results(write(tmp_path / "a.h5", MAST, replace(record, fields=one))) as results:
-        figure = draw(results["standing"], "forces")
+        figure = draw(results["standing"], "forces", member="guys")
     spans = sorted(
         (bar.get_x(), bar.get_x() + bar.get_width()) for bar in axes_of(figure).patches if bar.get_width()
     )
-    force = MAST.forces(0.02) / 1e3
-    shown = force[np.argsort(-np.abs(force), kind="stable")[:40]]
-    np.testing.assert_allclose(spans, sorted((min(f, 0.0), max(f, 0.0)) for f in shown.tolist()), atol=1e-12)
-    assert "axial force over 1 loading" in words_of(figure)
+    force = MAST.forces(0.02)[MAST.ties] / 1e3
+    np.testing.assert_allclose(spans, sorted((min(f, 0.0), max(f, 0.0)) for f in force.tolist()), atol=1e-12)
+    assert "axial force of guys over 1 loading" in words_of(figure)
 
 
 def test_nothing_found_is_drawn_without_a_fault(results, tmp_path) -> None:
