@@ -165,7 +165,7 @@ def found_length(a: Answer) -> float:
 
 
 def test_handbook_rope_of_given_length() -> None:
-    """READ: lecture notes, example 1. 1e-4 for printed digits, 1e-9 to own ones."""
+    """READ: the source's printed example 1. 1e-4 for printed digits, 1e-9 to own ones."""
     row = values("C11")
     a = level(120.0, 3 * 9.81, unstressed_length=140.0)
     H, _, _, T = pulls(a)

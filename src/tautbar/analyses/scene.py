@@ -94,11 +94,17 @@ class Scene:
         """Forces of supports on the structure (3, J) [N]; see `Freedom.reaction`."""
         return self.system.freedom.reaction(needed, load, displacement - self.sprung)
 
-    def loads_on_nothing(self, acting: Acting) -> list[str]:
-        """Joints at which something acts but no member is present and no support holds it."""
+    @property
+    def joints_there(self) -> Flags:
+        """Joints (J,) at which a member is present."""
         there = np.zeros(self.structure.joints, dtype=bool)
         at = self.structure.start[self.stage.members], self.structure.end[self.stage.members]
         there[np.concatenate(at)] = True
+        return there
+
+    def loads_on_nothing(self, acting: Acting) -> list[str]:
+        """Joints at which something acts but no member is present and no support holds it."""
+        there = self.joints_there
         held = np.zeros((3, there.size), dtype=bool)
         for support, stands in zip(self.parts.supports, self.stage.supports, strict=True):
             if stands:

@@ -40,7 +40,7 @@ def _answer(context: Context, s: Solved) -> str:
 
 
 def _displacement(context: Context, s: Solved) -> str:
-    size = np.sqrt((s.displacement * s.displacement).sum(axis=0))
+    size = np.sqrt((s.displacement * s.displacement).sum(axis=0)) * s.scene.joints_there
     if not size.size or not size.max() > 0:
         return ""
     j = int(size.argmax())
